@@ -1,0 +1,3 @@
+from fieldview.cli import main
+
+main()

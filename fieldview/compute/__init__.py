@@ -1,0 +1,1 @@
+"""Field numerics: arrays in, arrays out. No Qt, no files, no session."""

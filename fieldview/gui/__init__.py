@@ -1,0 +1,1 @@
+"""The window. Shows the session, edits the session, computes nothing."""

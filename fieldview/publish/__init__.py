@@ -1,0 +1,1 @@
+"""Figures, tables and exported fields. No Qt."""

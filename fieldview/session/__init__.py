@@ -1,0 +1,1 @@
+"""The session: the document, its ledger of steps, replay and store."""
