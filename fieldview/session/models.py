@@ -5,7 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 from typing import Any, Literal
 
-from pydantic import Field, PrivateAttr, model_validator
+from pydantic import Field, PrivateAttr, field_validator, model_validator
 
 from fieldview.files.reading import Reading
 from fieldview.session.base import Entry, Point, quantity
@@ -54,6 +54,13 @@ class Uncertainties(Entry):
     window: float | Point | None = quantity(
         "lengths", None, help="Size of the measuring window; 0 is a point probe"
     )
+
+    @field_validator("sigma", mode="before")
+    @classmethod
+    def _known_word(cls, sigma):
+        if isinstance(sigma, str) and sigma not in ("from file", "estimate"):
+            raise ValueError('give a number, one per component, "from file" or "estimate"')
+        return sigma
 
     @model_validator(mode="after")
     def _in_bounds(self):
