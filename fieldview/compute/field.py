@@ -169,6 +169,24 @@ class Field:
         """The field with these nodes masked, whatever they held, and the event added."""
         return self._set(nodes, Status.MASKED, event)
 
+    def restored(self, nodes: np.ndarray, event: Event) -> Field:
+        """The field with these nodes MEASURED again, holding their measured values."""
+        parts = {name: np.where(nodes, self.measured[name], part) for name, part in self.components.items()}
+        status = np.where(nodes, np.uint8(Status.MEASURED), self.status)
+        return self.with_(**parts, status=status, events=(*self.events, event))
+
+    def mapped(self, change: LinearMap, status: np.ndarray) -> Field:
+        """The field after a linear map of every component, with the statuses that go with it.
+
+        The map is kept, so that the uncertainty of whatever is computed later passes through it.
+        """
+        valid = self.valid
+        parts = {
+            name: np.reshape(change.forward(np.where(valid, part, 0.0).ravel()), part.shape)
+            for name, part in self.components.items()
+        }
+        return self.with_(**parts, status=status, maps=(*self.maps, change))
+
     def _set(self, nodes, status, event):
         return self.with_(status=np.where(nodes, np.uint8(status), self.status), events=(*self.events, event))
 

@@ -6,6 +6,7 @@ texts make the form in the window, the JSON Schema and the command line's help.
 
 from __future__ import annotations
 
+from itertools import pairwise
 from typing import Annotated, Literal
 
 from pydantic import Field, model_validator
@@ -88,7 +89,7 @@ class Mask(Step):
         if self.channel is not None and self.at_least is None and self.at_most is None:
             raise ValueError("a mask from a channel needs at_least or at_most")
         frames = [key[0] for key in self.motion]
-        if any(b <= a for a, b in zip(frames, frames[1:], strict=False)):
+        if any(b <= a for a, b in pairwise(frames)):
             raise ValueError("the keyframes of a mask's motion must be in increasing order of frame")
         return self
 

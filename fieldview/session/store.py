@@ -167,13 +167,14 @@ def _place(location: tuple) -> str:
     for before, part in zip((None, *location), location, strict=False):
         if isinstance(part, int):
             text += f"[{part}]"
-        elif (part in tags and (isinstance(before, int) or before == "region")) or "[" in part:
-            continue
-        elif part in {"float", "int", "str"} or part.startswith(("constrained", "literal", "dict", "tuple")):
-            continue
-        else:
+        elif not ((part in tags and (isinstance(before, int) or before == "region")) or _is_type(part)):
             text += f".{part}" if text else part
     return text
+
+
+def _is_type(part: str) -> bool:
+    """Whether a part of an error's place is the name of a type tried, and no key of the file."""
+    return "[" in part or part in {"float", "int", "str"} or part.startswith(("constrained", "literal"))
 
 
 def _relative_to(session: Session, folder: Path) -> Session:
@@ -205,7 +206,13 @@ def _laid_out(value: Any, indent: int = 0) -> str:
             for key, entry in value.items()
         ]
         return "{\n" + ",\n".join(rows) + "\n" + " " * indent + "}"
-    return "[\n" + ",\n".join(inner + _laid_out(entry, indent + 1) for entry in value) + "\n" + " " * indent + "]"
+    return (
+        "[\n"
+        + ",\n".join(inner + _laid_out(entry, indent + 1) for entry in value)
+        + "\n"
+        + " " * indent
+        + "]"
+    )
 
 
 def _numbers_only(value: Any) -> bool:

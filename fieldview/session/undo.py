@@ -30,9 +30,7 @@ class History:
         if not self.done:
             return self
         *rest, (name, before) = self.done
-        return replace(
-            self, session=before, done=tuple(rest), undone=(*self.undone, (name, self.session))
-        )
+        return replace(self, session=before, done=tuple(rest), undone=(*self.undone, (name, self.session)))
 
     def redo(self) -> History:
         """One edit forward; the same history where there is none."""
