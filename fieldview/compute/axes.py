@@ -24,8 +24,7 @@ def calibrate(
 ) -> Field:
     """The field in metres and seconds.
 
-    Uncertainties that came with the file are converted alike; those stated by the user are taken to be
-    in metres and seconds already.
+    The error model the field has by now is converted alike.
 
     Parameters
     ----------
@@ -62,7 +61,7 @@ def calibrate(
         grid=grid,
         units=METRIC,
         measured={name: part * factors[name] for name, part in field.measured.items()},
-        error=_scaled(field.error, factors),
+        error=_scaled(field.error, scale, factors),
         **{name: part * factors[name] for name, part in field.components.items()},
     )
 
@@ -156,16 +155,19 @@ def _turned(parts, change: Placement) -> dict[str, np.ndarray]:
     return {"u": velocity.real, "v": velocity.imag}
 
 
-def _scaled(error: ErrorModel, factors: dict[str, float]) -> ErrorModel:
-    if error.origin != "from file" or error.sigma is None:
-        return error
-    sigma = {name: np.asarray(value, float) * factors[name] for name, value in error.sigma.items()}
-    return replace(error, sigma=sigma)
+def _scaled(error: ErrorModel, scale, factors: dict[str, float]) -> ErrorModel:
+    if error.sigma is not None:
+        sigma = {name: np.asarray(value, float) * factors[name] for name, value in error.sigma.items()}
+        error = replace(error, sigma=sigma)
+    if error.window is not None:
+        error = replace(error, window=(error.window[0] * scale[0], error.window[1] * scale[1]))
+    if error.systematic.zero_offset is not None:
+        offset = error.systematic.zero_offset * factors["w"]
+        error = replace(error, systematic=replace(error.systematic, zero_offset=offset))
+    return error
 
 
 def _turned_error(error: ErrorModel, angle: float, reflect: str | None) -> ErrorModel:
-    """Sigma from the file belongs to the axes of the file; stated sigma to the axes as they are now."""
-    if error.origin != "from file":
-        return error
+    """The errors stay independent along the axes they were stated for; the turn back to them is kept."""
     turn = error.turn * cmath.exp(1j * angle)
     return replace(error, turn=turn.conjugate() if reflect else turn)
