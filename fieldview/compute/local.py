@@ -1,0 +1,135 @@
+"""What is known of a field at its nodes: components, derivatives, place about a centre."""
+
+from __future__ import annotations
+
+from functools import cached_property
+
+import numpy as np
+import scipy.sparse as sp
+
+from fieldview.compute.derivatives import derivative, derivative_rows
+from fieldview.compute.errors import InputError
+from fieldview.compute.field import Field
+
+DERIVATIVES = {"ux": ("u", 0), "uy": ("u", 1), "vx": ("v", 0), "vy": ("v", 1)}
+"""Component and axis (0 for x, 1 for y, of the plane) of each derivative."""
+
+
+class Local:
+    """A field seen node by node; derivatives are made when asked for, and once.
+
+    Parameters
+    ----------
+    field : Field
+    scheme : str or None
+        Derivative scheme; the field's own if None.
+    centre : complex, (float, float) or None
+        Point in the plane; the middle of the grid if None. [length]
+    """
+
+    def __init__(self, field: Field, scheme: str | None = None, centre=None):
+        self.field = field
+        self.scheme = field.derivative if scheme is None else scheme
+        self._centre = centre
+        self._fallback: set[int] | np.ndarray = np.zeros(0, np.intp)
+        self._along_lattice: dict[tuple[str, str], np.ndarray] = {}
+
+    @property
+    def ux(self) -> np.ndarray:
+        return self._slope("ux")
+
+    @property
+    def uy(self) -> np.ndarray:
+        return self._slope("uy")
+
+    @property
+    def vx(self) -> np.ndarray:
+        return self._slope("vx")
+
+    @property
+    def vy(self) -> np.ndarray:
+        return self._slope("vy")
+
+    def combined(self, first: str, sign: int, second: str) -> np.ndarray:
+        """Sum or difference of two derivatives, a fresh array."""
+        a, b = self._slope(first), self._slope(second)
+        return a - b if sign < 0 else a + b
+
+    @property
+    def fallback_count(self) -> int:
+        """Nodes where a derivative asked for so far is one-sided or of lower order."""
+        return int(np.unique(self._fallback).size)
+
+    @cached_property
+    def outward(self) -> np.ndarray:
+        """Unit vector away from the centre at every node, complex (ny, nx); NaN at the centre. [1]"""
+        nodes = self.field.grid.nodes
+        centre = self._centre
+        if centre is None:
+            centre = 0.5 * (nodes[0, 0] + nodes[-1, -1])
+        elif not isinstance(centre, complex):
+            centre = complex(*centre) if np.ndim(centre) else complex(centre)
+        arms = nodes - centre
+        distance = np.abs(arms)
+        return np.where(distance > 0, arms / np.where(distance > 0, distance, 1.0), np.nan)
+
+    @cached_property
+    def axes(self) -> np.ndarray:
+        """Components (2, 2) of the lattice's unit vectors: column k is lattice axis k in the plane."""
+        placement = self.field.grid.placement
+        columns = [complex(placement.vector_to_plane(arm)) for arm in (1 + 0j, 1j)]
+        turned = np.array([[z.real for z in columns], [z.imag for z in columns]])
+        # a quarter turn must not leave round-off where nothing of the other axis belongs
+        return np.where(np.abs(turned) < 1e-15, 0.0, turned)
+
+    def _slope(self, name: str) -> np.ndarray:
+        component, axis = DERIVATIVES[name]
+        parts = [
+            (factor, self._lattice_slope(component, along))
+            for factor, along in zip(self.axes[axis], ("x", "y"), strict=True)
+            if factor != 0
+        ]
+        if len(parts) == 1 and parts[0][0] == 1:
+            return parts[0][1]
+        return sum(factor * slope for factor, slope in parts)
+
+    def _lattice_slope(self, component: str, along: str) -> np.ndarray:
+        key = (component, along)
+        if key not in self._along_lattice:
+            self._check_plane()
+            values = getattr(self.field, component)
+            slope, fallback = derivative(values, self.field.grid, along, scheme=self.scheme)
+            self._along_lattice[key] = slope
+            self._fallback = np.concatenate([self._fallback, fallback])
+        return self._along_lattice[key]
+
+    def _check_plane(self) -> None:
+        if not self.field.grid.is_plane:
+            raise InputError("the derivatives need at least two rows and two columns of nodes")
+
+    def rows(self, slopes: dict, nodes: np.ndarray) -> dict[str, sp.csr_array]:
+        """For each component the rows (k, ny * nx) of a quantity with these slopes at flat ``nodes``.
+
+        The change of the quantity for small changes of the component's node values.
+        """
+        count = self.field.status.size
+        rows: dict[str, sp.csr_array] = {}
+
+        def add(component, matrix):
+            rows[component] = rows[component] + matrix if component in rows else matrix
+
+        lattice = None
+        for name, slope in slopes.items():
+            scale = np.broadcast_to(slope, self.field.grid.shape).ravel()[nodes]
+            if name not in DERIVATIVES:
+                entries = (scale, (np.arange(nodes.size), nodes))
+                add(name, sp.csr_array(entries, shape=(nodes.size, count)))
+                continue
+            if lattice is None:
+                valid = self.field.valid
+                lattice = derivative_rows(self.field.grid, valid, scheme=self.scheme, nodes=nodes)
+            component, axis = DERIVATIVES[name]
+            for factor, matrix in zip(self.axes[axis], lattice, strict=True):
+                if factor != 0:
+                    add(component, sp.csr_array(sp.diags_array(factor * scale) @ matrix))
+        return rows
