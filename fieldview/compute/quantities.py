@@ -181,10 +181,12 @@ def _divergence(at: Local):
 
 
 def _shear_strain(at: Local):
+    """Tensor component (du/dy + dv/dx)/2. [1/time]"""
     return 0.5 * at.combined("uy", 1, "vx"), lambda: {"uy": 0.5, "vx": 0.5}
 
 
 def _normal_strain(at: Local):
+    """Half the difference of the diagonal, (du/dx - dv/dy)/2: the shear strain of axes turned by 45 deg. [1/time]"""
     return 0.5 * at.combined("ux", -1, "vy"), lambda: {"ux": 0.5, "vy": -0.5}
 
 
@@ -241,77 +243,35 @@ def _swirling_strength(at: Local):
 
 
 _PLANE = ("u", "v")
+# heading, power of length, power of time
+_VELOCITY = ("Velocity", 1, -1)
+_ENERGY = ("Velocity", 2, -2)
+_RATE = ("Deformation", 0, -1)
+_SQUARE = ("Structure", 0, -2)
+_SWIRL = ("Structure", 0, -1)
 
 QUANTITIES: dict[str, Quantity] = {
     entry.name: entry
     for entry in (
-        Quantity("u", "u", "Velocity along x", "Velocity", 1, -1, True, ("u",), _component("u")),
-        Quantity("v", "v", "Velocity along y", "Velocity", 1, -1, True, ("v",), _component("v")),
-        Quantity("w", "w", "Velocity through the plane", "Velocity", 1, -1, True, ("w",), _component("w")),
-        Quantity("speed", "|U|", "Speed", "Velocity", 1, -1, False, _PLANE, _speed),
+        Quantity("u", "u", "Velocity along x", *_VELOCITY, True, ("u",), _component("u")),
+        Quantity("v", "v", "Velocity along y", *_VELOCITY, True, ("v",), _component("v")),
+        Quantity("w", "w", "Velocity through the plane", *_VELOCITY, True, ("w",), _component("w")),
+        Quantity("speed", "|U|", "Speed", *_VELOCITY, False, _PLANE, _speed),
         Quantity("direction", "θ", "Direction", "Velocity", 0, 0, True, _PLANE, _direction, angle=True),
+        Quantity("kinetic_energy", "k", "Kinetic energy per mass", *_ENERGY, False, _PLANE, _kinetic_energy),
+        Quantity("radial_velocity", "u_r", "Radial velocity", *_VELOCITY, True, _PLANE, _radial),
+        Quantity("tangential_velocity", "u_θ", "Tangential velocity", *_VELOCITY, True, _PLANE, _tangential),
+        Quantity("vorticity", "ω", "Vorticity", *_RATE, True, _PLANE, _vorticity),
+        Quantity("divergence", "∇·u", "Divergence", *_RATE, True, _PLANE, _divergence),
+        Quantity("shear_strain_rate", "ε_xy", "Shear strain rate", *_RATE, True, _PLANE, _shear_strain),
+        Quantity("normal_strain_rate", "ε_n", "Normal strain rate", *_RATE, True, _PLANE, _normal_strain),
         Quantity(
-            "kinetic_energy",
-            "k",
-            "Kinetic energy per mass",
-            "Velocity",
-            2,
-            -2,
-            False,
-            _PLANE,
-            _kinetic_energy,
+            "max_strain_rate", "ε_1", "Largest principal strain rate", *_RATE, True, _PLANE, _max_strain
         ),
-        Quantity("radial_velocity", "u_r", "Radial velocity", "Velocity", 1, -1, True, _PLANE, _radial),
+        Quantity("q_criterion", "Q", "Q criterion", *_SQUARE, True, _PLANE, _q_criterion),
+        Quantity("okubo_weiss", "W", "Okubo–Weiss parameter", *_SQUARE, True, _PLANE, _okubo_weiss),
         Quantity(
-            "tangential_velocity", "u_θ", "Tangential velocity", "Velocity", 1, -1, True, _PLANE, _tangential
-        ),
-        Quantity("vorticity", "ω", "Vorticity", "Deformation", 0, -1, True, _PLANE, _vorticity),
-        Quantity("divergence", "∇·u", "Divergence", "Deformation", 0, -1, True, _PLANE, _divergence),
-        Quantity(
-            "shear_strain_rate",
-            "ε_xy",
-            "Shear strain rate ½(∂u/∂y + ∂v/∂x)",
-            "Deformation",
-            0,
-            -1,
-            True,
-            _PLANE,
-            _shear_strain,
-        ),
-        Quantity(
-            "normal_strain_rate",
-            "ε_n",
-            "Normal strain rate ½(∂u/∂x − ∂v/∂y)",
-            "Deformation",
-            0,
-            -1,
-            True,
-            _PLANE,
-            _normal_strain,
-        ),
-        Quantity(
-            "max_strain_rate",
-            "ε_1",
-            "Largest principal strain rate",
-            "Deformation",
-            0,
-            -1,
-            True,
-            _PLANE,
-            _max_strain,
-        ),
-        Quantity("q_criterion", "Q", "Q criterion", "Structure", 0, -2, True, _PLANE, _q_criterion),
-        Quantity("okubo_weiss", "W", "Okubo–Weiss parameter", "Structure", 0, -2, True, _PLANE, _okubo_weiss),
-        Quantity(
-            "swirling_strength",
-            "λ_ci",
-            "Swirling strength",
-            "Structure",
-            0,
-            -1,
-            False,
-            _PLANE,
-            _swirling_strength,
+            "swirling_strength", "λ_ci", "Swirling strength", *_SWIRL, False, _PLANE, _swirling_strength
         ),
     )
 }

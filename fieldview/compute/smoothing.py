@@ -1,0 +1,147 @@
+"""Smoothing that never makes a value where there is none, kept as the linear map that it is."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+import numpy as np
+import scipy.sparse as sp
+
+from fieldview.compute.errors import InputError
+from fieldview.compute.grid import Grid
+from fieldview.compute.linear import LinearMap, SparseMap
+
+METHODS = ("gaussian", "savitzky_golay", "penalised")
+
+_GAUSSIAN_REACH = 4.0
+"""Standard deviations after which the Gaussian's weights are cut off."""
+
+
+def smoothing_map(
+    grid: Grid,
+    valid: np.ndarray,
+    *,
+    method: str = "gaussian",
+    width: float | None = None,
+    values: Mapping[str, np.ndarray] | None = None,
+) -> LinearMap:
+    """The map that smooths the values of valid nodes.
+
+    Parameters
+    ----------
+    grid : Grid
+    valid : bool ndarray (ny, nx)
+        Nodes with values; nothing is taken from or put at the others.
+    method : str
+        "gaussian": weights exp(-r^2 / 2 width^2) over valid nodes, divided by their sum (normalised
+        convolution). "savitzky_golay": parabolas fitted by least squares over a window, along x and
+        then along y. "penalised": see `penalised`.
+    width : float, optional
+        gaussian: standard deviation, 1 if left out; savitzky_golay: odd window, 5 if left out;
+        penalised: wavelength that is halved, chosen by generalised cross-validation if left out. [nodes]
+    values : mapping of component name to ndarray (ny, nx), optional
+        Needed by the cross-validation of "penalised" alone.
+
+    Returns
+    -------
+    LinearMap
+
+    Raises
+    ------
+    InputError
+        An unknown method or a width that does not fit it.
+
+    Sources: Knutsson & Westin (1993) for the normalised convolution (from memory); Savitzky & Golay (1964)
+    Anal. Chem. 36:1627-1639; Garcia (2010) Comput. Stat. Data Anal. 54:1167-1178.
+    """
+    if method not in METHODS:
+        raise InputError(f'smoothing "{method}" is not known; the methods are: {", ".join(METHODS)}')
+    if width is not None and not width > 0:
+        raise InputError(f"the width of a smoothing is {width}; give a positive number")
+    valid = np.asarray(valid, bool)
+    if method == "penalised":
+        from fieldview.compute.penalised import penalised_map
+
+        return penalised_map(valid, width=width, values=values)
+    if method == "gaussian":
+        return SparseMap(_gaussian(valid, 1.0 if width is None else width))
+    return SparseMap(_savitzky_golay(grid, valid, 5 if width is None else width))
+
+
+def _gaussian(valid: np.ndarray, width: float) -> sp.csr_array:
+    ny, nx = valid.shape
+    plain = sp.kron(_band(ny, width), _band(nx, width), format="csr")
+    there = sp.diags_array(valid.ravel().astype(float))
+    weights = sp.csr_array(there @ plain @ there)
+    weights.eliminate_zeros()
+    total = weights.sum(axis=1)
+    return sp.csr_array(sp.diags_array(1 / np.where(total > 0, total, 1.0)) @ weights)
+
+
+def _band(size: int, width: float) -> sp.csr_array:
+    """Gaussian weights (size, size) between the nodes of one axis."""
+    reach = min(int(np.ceil(_GAUSSIAN_REACH * width)), size - 1)
+    offsets = np.arange(-reach, reach + 1)
+    weights = np.exp(-0.5 * (offsets / width) ** 2)
+    return sp.diags_array(list(weights), offsets=list(offsets), shape=(size, size), format="csr")
+
+
+def _savitzky_golay(grid: Grid, valid: np.ndarray, width: float) -> sp.csr_array:
+    window = round(width)
+    if window != width or window < 3 or window % 2 == 0:
+        raise InputError(f"the window of a Savitzky-Golay smoothing is {width}; give an odd number from 3 on")
+    along_x = _local_parabolas(grid.x, valid, window, stride=1)
+    along_y = _local_parabolas(grid.y, valid.T, window, stride=grid.x.size)
+    return sp.csr_array(along_y @ along_x)
+
+
+def _local_parabolas(axis: np.ndarray, lines: np.ndarray, window: int, *, stride: int) -> sp.csr_array:
+    """Least-squares parabolas along one direction, (n, n), evaluated at the node itself.
+
+    The window is shifted inward at the ends of the axis. From it the nodes without a gap between them and
+    the node itself are taken; fewer than three of these give a straight line, or the value itself.
+
+    Parameters
+    ----------
+    axis : ndarray (size,)
+    lines : bool ndarray (count, size)
+        Valid nodes, line by line.
+    window : int
+    stride : int
+        Flat distance of neighbours along the line.
+    """
+    count, size = lines.shape
+    window = min(window, size)
+    across = lines.size // size if stride != 1 else 0
+    rows, columns, weights = [], [], []
+    for place in range(size):
+        first = min(max(place - window // 2, 0), size - window)
+        members = np.arange(first, first + window)
+        there = lines[:, members] & lines[:, [place]]
+        own = place - first
+        # cut off what lies behind a gap, seen from the node
+        there[:, own:] = np.logical_and.accumulate(there[:, own:], axis=1)
+        there[:, : own + 1] = np.logical_and.accumulate(there[:, own::-1], axis=1)[:, ::-1]
+        patterns, which = np.unique(there, axis=0, return_inverse=True)
+        for number, pattern in enumerate(patterns):
+            if not pattern.any():
+                continue
+            lane = np.flatnonzero(which.ravel() == number)
+            taken = members[pattern]
+            fit = _fit_weights(axis[taken] - axis[place])
+            base = lane * (1 if across else size)
+            rows.append(np.repeat(base + place * stride, taken.size))
+            columns.append((base[:, None] + taken * stride).ravel())
+            weights.append(np.tile(fit, lane.size))
+    if not rows:
+        return sp.csr_array((lines.size, lines.size))
+    entries = (np.concatenate(weights), (np.concatenate(rows), np.concatenate(columns)))
+    return sp.csr_array(entries, shape=(lines.size, lines.size))
+
+
+def _fit_weights(arms: np.ndarray) -> np.ndarray:
+    """Weights (k,) of the value at 0 of the parabola (or less, if there are fewer) through points at arms."""
+    if arms.size < 3:
+        return (arms == 0).astype(float)
+    reach = np.abs(arms).max()
+    return np.linalg.pinv((arms / reach)[:, None] ** np.arange(3))[0]
