@@ -1,0 +1,162 @@
+"""Puts a picture on the canvas: only what changed since the last one is made anew."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from fieldview.compute.field import Status
+from fieldview.gui import theme as themes
+from fieldview.gui import wording
+from fieldview.gui.canvas.arrows import arrow_scale, thinning
+from fieldview.gui.canvas.furniture import Bar, Key
+from fieldview.gui.canvas.layers import Flow
+from fieldview.gui.canvas.map_image import map_image
+from fieldview.gui.canvas.region_layer import Marked
+from fieldview.gui.canvas.view import Canvas, level_indices
+from fieldview.gui.picture import MapOf, Picture
+from fieldview.gui.region_text import label_lines
+from fieldview.gui.theme import LIGHT, Theme
+
+_MARK_WORDS = (
+    (Status.MEASURED, "measured"),
+    (Status.FILLED, "filled"),
+    (Status.REJECTED, "rejected"),
+    (Status.MASKED, "masked"),
+    (Status.MISSING, "missing"),
+)
+
+
+class Showing:
+    """Draws pictures on one canvas."""
+
+    def __init__(self, canvas: Canvas):
+        self._canvas = canvas
+        self._seen: dict[str, tuple] = {}
+        self._picture = Picture()
+        self._theme: Theme = LIGHT
+        self._marks: tuple[tuple[str, str], ...] = ()
+        canvas.range_moved.connect(self._lens_changed)
+
+    def set_theme(self, theme: Theme) -> None:
+        self._theme = theme
+        self._seen.clear()
+        self._canvas.set_theme(theme)
+        self.draw(self._picture)
+
+    def draw(self, picture: Picture) -> None:
+        self._picture = picture
+        canvas, shown = self._canvas, picture.shown
+        if self._new("field", picture.field):
+            canvas.set_extent(picture.field)
+            self._marks = marks_of(picture.field)
+            self._label_axes(picture)
+        levels = shown.levels.get(picture.map.name) if picture.map else None
+        if self._new("map", picture.map, levels, picture.field):
+            self._draw_map(picture.map, levels)
+        if self._new("iso", picture.iso_now):
+            lines = picture.iso_now.lines if picture.iso_now else ()
+            canvas.lines_layer.show(lines, self._theme)
+        if self._new(
+            "flow",
+            picture.field,
+            picture.tint_now,
+            shown.speed,
+            shown.arrow_stretch,
+            shown.rejected_arrows,
+            shown.levels.get(shown.arrow_colour),
+        ):
+            self._draw_flow()
+        regions = picture.regions + (
+            (picture.draft,) if picture.draft is not None and picture.draft_of is None else ()
+        )
+        measured = tuple(picture.measured_of(region) for region in regions)
+        if self._new("regions", regions, measured, shown.selected, shown.coverage, picture.stale):
+            canvas.region_layer.show(
+                tuple(
+                    self._marked(place, region, found)
+                    for place, (region, found) in enumerate(zip(regions, measured, strict=True))
+                ),
+                self._theme,
+            )
+
+    def _new(self, part: str, *wanted) -> bool:
+        before = self._seen.get(part)
+        if before is not None and all(a is b or _same(a, b) for a, b in zip(wanted, before, strict=True)):
+            return False
+        self._seen[part] = wanted
+        return True
+
+    def _draw_map(self, shown: MapOf | None, levels) -> None:
+        canvas, field = self._canvas, self._picture.field
+        if shown is None or levels is None or shown.of is not field:
+            canvas.map_layer.show(None, field, self._theme)
+            canvas.colour_bar.show_bar(None, self._theme)
+            return
+        colours = themes.colour_table(self._theme, shown.kind)
+        canvas.map_layer.show(map_image(shown.values, field.grid, colours, *levels), field, self._theme)
+        label = wording.with_unit(f"{shown.title} {shown.symbol}", shown.unit)
+        beyond = (
+            bool(np.nanmin(shown.values, initial=np.inf) < levels[0]),
+            bool(np.nanmax(shown.values, initial=-np.inf) > levels[1]),
+        )
+        signed = shown.kind == "signed"
+        canvas.colour_bar.show_bar(Bar(colours, *levels, label, *beyond, signed), self._theme)
+
+    def _lens_changed(self) -> None:
+        # the thinning and the arrows' length on the screen follow the zoom
+        lens = self._canvas.lens()
+        if self._new("lens", round(lens.scale, 9), lens.width, lens.height):
+            self._draw_flow()
+
+    def _draw_flow(self) -> None:
+        canvas, picture, shown = self._canvas, self._picture, self._picture.shown
+        field = picture.field
+        if field is None:
+            canvas.flow_layer.show(None)
+            canvas.legend.show_key(None, self._theme)
+            return
+        lens = canvas.lens()
+        scale = arrow_scale(field, lens, shown.speed or 0.0, shown.arrow_stretch)
+        tint, colours = picture.tint_now, None
+        if tint is not None and tint.name in shown.levels:
+            colours = level_indices(tint.values, *shown.levels[tint.name])
+        canvas.flow_layer.show(Flow(field, self._theme, scale, colours, shown.rejected_arrows))
+        speed = (
+            f"{wording.short(shown.speed)} {wording.unit_text(field.units.velocity)}" if shown.speed else ""
+        )
+        thin = thinning(field, lens).sentence if field.in_plane else "no arrows: the field has only w"
+        pixels = scale.pixels if field.in_plane and shown.speed else 0.0
+        canvas.legend.show_key(Key(speed if pixels else "", pixels, thin, self._marks), self._theme)
+
+    def _label_axes(self, picture: Picture) -> None:
+        if picture.field is not None:
+            length = picture.field.units.length
+            self._canvas.set_axis_labels(f"x [{length}]", f"y [{length}]")
+
+    def _marked(self, place: int, region, measured) -> Marked:
+        shown = self._picture.shown
+        live = region is self._picture.draft
+        chosen = live or region.name == shown.selected
+        lines = label_lines(measured.row, coverage=shown.coverage, full=chosen) if measured else ()
+        stale = self._picture.stale
+        return Marked(
+            region,
+            place,
+            tuple(text for text, _ in lines),
+            chosen,
+            tuple(noise or stale for _, noise in lines),
+        )
+
+
+def marks_of(field) -> tuple[tuple[str, str], ...]:
+    """The node marks that occur in a field, in the legend's order."""
+    if field is None:
+        return ()
+    found = [(word, word) for status, word in _MARK_WORDS if field.count(status)]
+    return tuple(found) if field.in_plane else tuple(f for f in found if f[0] != "measured")
+
+
+def _same(a, b) -> bool:
+    if isinstance(a, tuple) and isinstance(b, tuple):
+        return len(a) == len(b) and all(x is y or _same(x, y) for x, y in zip(a, b, strict=True))
+    return isinstance(a, int | float | str | bool) and type(a) is type(b) and a == b

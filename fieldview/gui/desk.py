@@ -1,0 +1,343 @@
+"""The window's one changeable place: it holds the picture, and every change goes through it.
+
+Commands and panels call the methods here; each puts a new picture in place of the old one, starts the
+background work that the new picture needs, and says ``redrawn``. Nothing flows the other way.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from pathlib import Path
+
+from PySide6.QtCore import QObject, Signal
+
+from fieldview.compute.errors import InputError
+from fieldview.gui import work
+from fieldview.gui.jobs import LATER, Answer, Jobs
+from fieldview.gui.picture import NOTHING, Notice, Picture, Shown
+from fieldview.gui.pursuit import Pursuit
+from fieldview.session.models import Session
+from fieldview.session.undo import History
+
+
+class Desk(QObject):
+    redrawn = Signal()
+
+    def __init__(self, parent: QObject | None = None):
+        super().__init__(parent)
+        self.picture = Picture()
+        self.bench = None
+        self.jobs = Jobs(self)
+        self.jobs.answered.connect(self._answered)
+        self.jobs.changed.connect(self._tasks_changed)
+        self._pursuit = Pursuit(self)
+        self._opening: Path | None = None
+        self.after_saving: Callable[[], None] | None = None
+
+    # -- opening and saving --------------------------------------------------------------------------
+
+    def open(self, paths) -> None:
+        """Open a session file or the files of a run; what cannot be opened is said in the banner."""
+        paths = [Path(path) for path in paths]
+        if not paths:
+            return
+        try:
+            if len(paths) == 1 and paths[0].suffix.lower() == ".json":
+                from fieldview.session.store import load_session
+
+                self.adopt(load_session(paths[0]), paths[0])
+            else:
+                self.adopt(work.session_of_files(paths), None)
+        except InputError as error:
+            self.complain(str(error))
+
+    def adopt(self, session: Session, path: Path | None) -> None:
+        """Take up a session: it becomes the first of a new history, and its run is opened."""
+        self.jobs.cancel_all()
+        self.bench = None
+        self._pursuit.forget()
+        shown = shown_from_view(session.view, self.picture.shown)
+        self._put(Picture(History(session), session, path, shown))
+        self.jobs.submit("open", work.open_session, session, title=f"Opening {_name(session, path)}")
+
+    def save(self, path: Path) -> None:
+        """Write the session in the background, whole or not at all; a failure is said in the banner."""
+        session = self.picture.session
+        if session is None:
+            return
+        view = view_from_shown(self.picture.shown)
+        title = f"Saving {path.name}"
+        self._saving = session
+        self.jobs.submit("save", work.save, session, self.bench, path, view, title=title)
+
+    def export(self, path: Path, names=()) -> None:
+        if self.picture.field is not None:
+            title = f"Writing {path.name}"
+            self.jobs.submit(
+                "export", work.export_field, self.picture.field, path, names, lane="derive", title=title
+            )
+
+    def follow(self) -> None:
+        """Measure every region on every frame in the background; asked again while it runs, it stops."""
+        picture = self.picture
+        if picture.run is None or self.bench is None:
+            return
+        if self.jobs.is_pending("follow"):
+            self.jobs.cancel("follow")
+            return
+        bench = self.bench.updated(picture.session)
+        frames = [frame for frame in range(picture.run.frames) if frame not in picture.traces]
+        self.jobs.submit(
+            "follow", work.follow_regions, bench, picture.session, frames, urgency=LATER, title="Following"
+        )
+
+    # -- editing -------------------------------------------------------------------------------------
+
+    def commit(self, name: str, session: Session, **shown) -> None:
+        """A new session under a name for Edit → Undo; one that changes nothing leaves no trace."""
+        history = self.picture.history
+        if history is None:
+            return
+        session = session.in_folder(history.session.folder)
+        picture = self.picture.with_(
+            history=history.edited(name, session), draft=None, draft_of=None, draft_measured=None
+        )
+        self._put(_still_there(picture.showing(**shown) if shown else picture))
+
+    def undo(self) -> None:
+        self._travel(History.undo)
+
+    def redo(self) -> None:
+        self._travel(History.redo)
+
+    def _travel(self, move) -> None:
+        if self.picture.history is not None:
+            moved = self.picture.with_(
+                history=move(self.picture.history), draft=None, draft_of=None, draft_measured=None
+            )
+            self._put(_still_there(moved))
+
+    def edit(self, name: str, **changes) -> None:
+        """Commit the session with these attributes changed, checked as if read from a file."""
+        try:
+            session = checked(self.picture.session, **changes)
+        except InputError as error:
+            self.complain(str(error))
+            return
+        self.commit(name, session)
+
+    def add_region(self, region) -> None:
+        from fieldview.gui.theme import REGION_COLOURS
+
+        session = self.picture.session
+        if session is None:
+            return
+        used = [r.colour for r in session.regions]
+        colour = next(
+            (c for c in REGION_COLOURS if c not in used), REGION_COLOURS[len(used) % len(REGION_COLOURS)]
+        )
+        region = region.model_copy(update={"colour": region.colour or colour})
+        grown = session.model_copy(update={"regions": (*session.regions, region)})
+        self.commit(f"Draw {region.name}", grown, selected=region.name)
+
+    def change_region(self, name: str, region, title: str) -> None:
+        """Put a region in another's place (a new name keeps it selected)."""
+        session = self.picture.session
+        regions = tuple(region if r.name == name else r for r in session.regions)
+        try:
+            changed = checked(session, regions=regions)
+        except InputError as error:
+            self.drop_draft()
+            self.complain(str(error))
+            return
+        self.commit(title, changed, selected=region.name)
+
+    def free_name(self, stem: str) -> str:
+        """``circle 1``, ``circle 2``, …: the first that no region has."""
+        taken = {r.name for r in self.picture.session.regions} if self.picture.session else set()
+        number = 1
+        while f"{stem} {number}" in taken:
+            number += 1
+        return f"{stem} {number}"
+
+    # -- looking -------------------------------------------------------------------------------------
+
+    def show(self, **changes) -> None:
+        """Look at something else, or in another way; no undo step."""
+        picture = self.picture.showing(**changes)
+        if picture.shown != self.picture.shown:
+            self._put(picture)
+
+    def go_to(self, frame: int) -> None:
+        """Show this frame, held within the run."""
+        run = self.picture.run
+        if run is not None:
+            self.show(frame=min(max(frame, 0), run.frames - 1))
+
+    def point_at(self, at: complex | None) -> None:
+        if at != self.picture.cursor:
+            self._put(self.picture.with_(cursor=at))
+
+    def is_over_field(self, at: complex) -> bool:
+        field = self.picture.field
+        if field is None:
+            return False
+        local = complex(field.grid.placement.to_lattice(at))
+        x, y = field.grid.x, field.grid.y
+        return bool(x[0] <= local.real <= x[-1] and y[0] <= local.imag <= y[-1])
+
+    def draft(self, region, of: str | None = None) -> None:
+        """A region as it is being drawn or dragged, with its numbers, before it becomes an edit."""
+        picture = self.picture
+        measured = None
+        if picture.field is not None and picture.prepared is not None and region.outline().problem() is None:
+            measured = work.measure_quickly(picture.session, picture.field, picture.prepared, (region,))[0]
+        self._put(picture.with_(draft=region, draft_of=of, draft_measured=measured))
+
+    def drop_draft(self) -> None:
+        if self.picture.draft is not None:
+            self._put(self.picture.with_(draft=None, draft_of=None, draft_measured=None))
+
+    def complain(self, text: str, *offers: tuple[str, str]) -> None:
+        """Say in the banner what happened and what to do."""
+        self._put(self.picture.with_(notice=Notice(text, offers=offers)))
+
+    def tell(self, text: str, *offers: tuple[str, str]) -> None:
+        self._put(self.picture.with_(notice=Notice(text, grave=False, offers=offers)))
+
+    def dismiss(self) -> None:
+        if self.picture.notice is not None:
+            self._put(self.picture.with_(notice=None))
+
+    # -- background answers --------------------------------------------------------------------------
+
+    def update(self, **changes) -> None:
+        """Put answers of background work into the picture."""
+        self._put(self.picture.with_(**changes))
+
+    def _answered(self, answer: Answer) -> None:
+        if answer.failed:
+            self._failed(answer)
+        elif answer.kind == "open":
+            self._opened(answer.value)
+        elif answer.kind == "save":
+            self.update(saved=self._saving, path=answer.value, notice=None)
+            if self.after_saving is not None:
+                follow, self.after_saving = self.after_saving, None
+                follow()
+        elif answer.kind == "export":
+            self.tell(f"{answer.value.name} was written to {answer.value.parent}.")
+        elif answer.value is not None:
+            self._pursuit.answered(answer)
+
+    def _opened(self, opened: work.Opened) -> None:
+        self.bench = opened.bench
+        frame = min(self.picture.shown.frame, opened.facts.frames - 1)
+        session = opened.session.in_folder(self.picture.session.folder)
+        saved = session if self.picture.path is not None else None
+        picture = self.picture.showing(frame=frame)
+        notice = Notice(opened.facts.notes[0], grave=False) if opened.facts.notes else None
+        self._put(picture.with_(history=History(session), saved=saved, run=opened.facts, notice=notice))
+
+    def _failed(self, answer: Answer) -> None:
+        if answer.kind == "open" and answer.questions:
+            self._put(self.picture.with_(questions=answer))
+            return
+        if answer.kind == "open" and self.picture.path is None:
+            self._put(Picture(shown=self.picture.shown, notice=Notice(answer.error)))
+            return
+        self.after_saving = None
+        self.complain(answer.error)
+
+    def _tasks_changed(self) -> None:
+        self._put(self.picture.with_(tasks=self.jobs.tasks), pursue=False)
+
+    def _put(self, picture: Picture, *, pursue: bool = True) -> None:
+        self.picture = picture
+        if pursue:
+            self._pursuit.pursue()
+        self.redrawn.emit()
+
+
+def checked(session: Session, **changes) -> Session:
+    """The session with changes, validated as a whole; raises InputError with one plain sentence."""
+    from pydantic import ValidationError
+
+    kept = {name: getattr(session, name) for name in Session.model_fields}
+    try:
+        return Session.model_validate({**kept, **changes}).in_folder(session.folder)
+    except ValidationError as error:
+        first = error.errors()[0]
+        place = ".".join(str(part) for part in first["loc"])
+        message = first["msg"].removeprefix("Value error, ")
+        raise InputError(f"{place}: {message}" if place else message) from None
+
+
+_KEPT = ("frame", "quantity", "iso_lines", "arrow_colour", "rejected_arrows", "coverage", "arrow_stretch")
+
+
+def view_from_shown(shown: Shown) -> dict:
+    """What is worth keeping of how the session was looked at."""
+    view = {name: getattr(shown, name) for name in _KEPT if getattr(shown, name) != getattr(Shown(), name)}
+    if shown.levels:
+        view["levels"] = {name: list(levels) for name, levels in sorted(shown.levels.items())}
+    if shown.speed:
+        view["speed"] = shown.speed
+    return view
+
+
+def shown_from_view(view: dict, before: Shown) -> Shown:
+    """How a session is looked at first: as it was saved, else in the usual way; the tool stays in hand."""
+    kinds = {name: type(getattr(Shown(), name)) for name in _KEPT}
+    taken = {}
+    for name, kind in kinds.items():
+        value = view.get(name)
+        if isinstance(value, kind if kind is not type(None) else str) or (
+            kind is float and isinstance(value, int)
+        ):
+            taken[name] = value
+    levels = view.get("levels")
+    if isinstance(levels, dict):
+        taken["levels"] = {
+            str(name): (float(pair[0]), float(pair[1]))
+            for name, pair in levels.items()
+            if isinstance(pair, list) and len(pair) == 2 and all(isinstance(n, int | float) for n in pair)
+        }
+    if isinstance(view.get("speed"), int | float):
+        taken["speed"] = float(view["speed"])
+    return Shown(tool=before.tool, **taken)
+
+
+def _still_there(picture: Picture) -> Picture:
+    """Forget a selection whose region or ledger line is gone."""
+    names = {r.name for r in picture.session.regions}
+    lines = len(picture.session.ledger)
+    shown = picture.shown
+    changes = {}
+    if shown.selected not in names:
+        changes["selected"] = None
+    if shown.line is not None and shown.line >= lines:
+        changes["line"] = None
+    if shown.as_of is not None and shown.as_of >= lines:
+        changes["as_of"] = None
+    return _measured_anew(picture.showing(**changes))
+
+
+def _measured_anew(picture: Picture) -> Picture:
+    """With quick numbers for the regions that an edit changed; the full ones follow in the background."""
+    kept = {
+        r.name: picture.measured[r.name]
+        for r in picture.session.regions
+        if r.name in picture.measured
+        and picture.measured[r.name].region == r
+        and picture.measured[r.name].line == picture.session.line
+    }
+    changed = tuple(r for r in picture.session.regions if r.name not in kept)
+    if picture.field is not None and picture.prepared is not None:
+        quick = work.measure_quickly(picture.session, picture.field, picture.prepared, changed)
+        kept |= {m.region.name: m for m in quick}
+    return picture.with_(measured=kept or NOTHING)
+
+
+def _name(session: Session, path: Path | None) -> str:
+    return path.name if path is not None else session.run.files[0]

@@ -1,0 +1,1 @@
+"""The panels around the canvas. Each draws the picture and asks the desk for changes."""

@@ -1,0 +1,71 @@
+"""The banner over the canvas: what happened, where, and what to do. Never modal."""
+
+from __future__ import annotations
+
+from PySide6.QtCore import QEvent, Qt
+from PySide6.QtWidgets import QFrame, QHBoxLayout, QPushButton, QWidget
+
+from fieldview.gui.panels.base import label, set_property
+from fieldview.gui.picture import Notice, Picture
+
+
+class Banner(QFrame):
+    """Lies over the top of its parent and keeps its width."""
+
+    MARGIN = 12
+
+    def __init__(self, desk, run_command, parent: QWidget):
+        super().__init__(parent)
+        self._desk, self._run_command = desk, run_command
+        self.setObjectName("banner")
+        self.setProperty("role", "banner")
+        self.setAccessibleName("Message")
+        row = QHBoxLayout(self)
+        row.setContentsMargins(12, 8, 8, 8)
+        row.setSpacing(8)
+        self.text = label("", wrap=True)
+        self.text.setObjectName("banner_text")
+        self.text.setTextInteractionFlags(Qt.TextInteractionFlag.TextSelectableByMouse)
+        row.addWidget(self.text, 1)
+        self._offers = QHBoxLayout()
+        row.addLayout(self._offers)
+        self._close = QPushButton("Close")
+        self._close.setAccessibleName("Close the message")
+        self._close.clicked.connect(desk.dismiss)
+        row.addWidget(self._close, 0, Qt.AlignmentFlag.AlignTop)
+        self._notice: Notice | None = None
+        parent.installEventFilter(self)
+        self.hide()
+
+    def draw(self, picture: Picture) -> None:
+        notice = picture.notice
+        if notice is self._notice:
+            return
+        self._notice = notice
+        if notice is None:
+            self.hide()
+            return
+        self.text.setText(notice.text)
+        set_property(self, "grave", notice.grave)
+        while self._offers.count():
+            self._offers.takeAt(0).widget().deleteLater()
+        for text, command in notice.offers:
+            button = QPushButton(text)
+            button.clicked.connect(lambda _=False, command=command: self._run_command(command))
+            self._offers.addWidget(button, 0, Qt.AlignmentFlag.AlignTop)
+        self.show()
+        self.raise_()
+        self._place()
+
+    def eventFilter(self, watched, event):
+        if event.type() == QEvent.Type.Resize and self.isVisible():
+            self._place()
+        return False
+
+    def _place(self):
+        width = min(self.parent().width() - 2 * self.MARGIN, 760)
+        self.setFixedWidth(max(width, 200))
+        self.adjustSize()
+        height = self.layout().heightForWidth(self.width()) if self.layout().hasHeightForWidth() else -1
+        self.resize(self.width(), max(height, self.sizeHint().height()))
+        self.move((self.parent().width() - self.width()) // 2, self.MARGIN)

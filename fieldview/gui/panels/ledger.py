@@ -1,0 +1,286 @@
+"""Ledger: what was done to the vectors, line by line, with counts; every line has a switch and settings."""
+
+from __future__ import annotations
+
+from PySide6.QtCore import QMimeData, QPoint, Qt
+from PySide6.QtGui import QDrag
+from PySide6.QtWidgets import (
+    QAbstractButton,
+    QCheckBox,
+    QFrame,
+    QGridLayout,
+    QHBoxLayout,
+    QMenu,
+    QScrollArea,
+    QSizePolicy,
+    QToolButton,
+    QVBoxLayout,
+    QWidget,
+)
+
+from fieldview.compute.units import Units
+from fieldview.gui import ledger_edits, wording
+from fieldview.gui.forms import ModelForm
+from fieldview.gui.panels.base import Panel, label, set_property
+from fieldview.gui.panels.switch import Switch
+from fieldview.gui.picture import Picture
+
+LINE_MIME = "application/x-loopflux-ledger-line"
+
+
+class Ledger(Panel):
+    def __init__(self, desk, parent=None):
+        super().__init__(desk, "ledger", "Ledger", parent)
+        self.add = QToolButton()
+        self.add.setText("Add step")
+        self.add.setProperty("role", "plain")
+        self.add.setAccessibleName("Add a step to the ledger")
+        self.add.setPopupMode(QToolButton.ToolButtonPopupMode.InstantPopup)
+        self.add.setMenu(self._menu())
+        self.heading_row.addStretch()
+        self.heading_row.addWidget(self.add)
+        self._page = QWidget()
+        self._page.setProperty("role", "panel")
+        # as wide as the panel, never wider: the lines wrap
+        self._page.setSizePolicy(QSizePolicy.Policy.Ignored, QSizePolicy.Policy.Preferred)
+        self._stack = QVBoxLayout(self._page)
+        self._stack.setContentsMargins(0, 0, 0, 0)
+        self._stack.setSpacing(0)
+        self._stack.addStretch()
+        scroll = QScrollArea()
+        scroll.setProperty("role", "panel")
+        scroll.setFrameShape(QFrame.Shape.NoFrame)
+        scroll.setWidgetResizable(True)
+        scroll.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
+        scroll.setFocusPolicy(Qt.FocusPolicy.NoFocus)
+        scroll.setWidget(self._page)
+        self.column.addWidget(scroll, 1)
+        self._run_line = RunLine()
+        self._stack.insertWidget(0, self._run_line)
+        self.lines: list[LedgerLine] = []
+
+    def _menu(self) -> QMenu:
+        menu = QMenu(self)
+        for model in ledger_edits.ADDABLE:
+            title = ledger_edits.title_of(model)
+            action = menu.addAction(title)
+            action.setToolTip((model.__doc__ or "").strip().splitlines()[0])
+            action.triggered.connect(lambda _=False, model=model: ledger_edits.add(self.desk, model))
+        menu.setToolTipsVisible(True)
+        return menu
+
+    def draw(self, picture: Picture) -> None:
+        self.setEnabled(picture.session is not None)
+        self._run_line.draw(picture)
+        steps = picture.session.ledger if picture.session else ()
+        while len(self.lines) < len(steps):
+            line = LedgerLine(self.desk, len(self.lines), self)
+            self._stack.insertWidget(1 + len(self.lines), line)
+            self.lines.append(line)
+        while len(self.lines) > len(steps):
+            line = self.lines.pop()
+            self._stack.removeWidget(line)
+            line.hide()
+            line.deleteLater()
+        for line in self.lines:
+            line.draw(picture)
+
+
+class RunLine(QFrame):
+    """The first line: the run itself."""
+
+    def __init__(self):
+        super().__init__()
+        self.setProperty("role", "ledger line")
+        column = QVBoxLayout(self)
+        column.setContentsMargins(40, 6, 4, 6)
+        column.setSpacing(1)
+        self.title = label("", wrap=True)
+        self.title.setTextFormat(Qt.TextFormat.RichText)
+        self.detail = label("", "muted", wrap=True)
+        column.addWidget(self.title)
+        column.addWidget(self.detail)
+
+    def draw(self, picture: Picture) -> None:
+        run = picture.run
+        if picture.session is None:
+            self.title.setText("")
+            self.detail.setText("Nothing is open.")
+            return
+        name = picture.session.title or picture.session.run.files[0]
+        if run is None:
+            self.title.setText(f"<b>Run</b> {escaped(name)}")
+            self.detail.setText("opening …")
+            return
+        frames = "1 frame" if run.frames == 1 else f"{run.frames:,} frames"
+        ny, nx = run.shape
+        self.title.setText(f"<b>Run</b> {escaped(name)}: {frames}, {nx} × {ny} nodes")
+        length = run.units.split(",")[0]
+        gaps = [wording.short(s) for s in run.spacing if s == s]
+        parts = [f"{' × '.join(dict.fromkeys(gaps))} {length} apart"] if gaps else []
+        parts.append(run.units.replace("px, pulse", "px per pulse"))
+        parts += [f"{len(run.notes)} remarks on reading"] if run.notes else []
+        self.detail.setText(" · ".join(parts))
+        self.detail.setToolTip("\n".join(run.notes))
+
+
+class LedgerLine(QFrame):
+    """One step: switch, number, sentence, what it did; chosen, its settings below."""
+
+    def __init__(self, desk, number: int, parent=None):
+        super().__init__(parent)
+        self._desk, self.number = desk, number
+        self.setProperty("role", "ledger line")
+        self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
+        self.setAcceptDrops(True)
+        self._pressed: QPoint | None = None
+        grid = QGridLayout(self)
+        grid.setContentsMargins(0, 6, 4, 6)
+        grid.setHorizontalSpacing(6)
+        grid.setVerticalSpacing(1)
+        grid.setColumnStretch(2, 1)
+        self.switch: QCheckBox | QAbstractButton = Switch()
+        self.switch.clicked.connect(lambda on: ledger_edits.switch(desk, self.number, on))
+        self.place = label("", "muted")
+        self.title = label("", wrap=True)
+        self.title.setTextFormat(Qt.TextFormat.RichText)
+        self.outcome = label("", "muted", wrap=True)
+        top = Qt.AlignmentFlag.AlignTop
+        grid.addWidget(self.switch, 0, 0, top)
+        grid.addWidget(self.place, 0, 1, top)
+        grid.addWidget(self.title, 0, 2)
+        grid.addWidget(self.outcome, 1, 2)
+        self.form = ModelForm(lambda step: ledger_edits.change(desk, self.number, step))
+        self.form.hide()
+        grid.addWidget(self.form, 2, 1, 1, 2)
+        self.buttons = self._buttons()
+        self.buttons.hide()
+        grid.addWidget(self.buttons, 3, 1, 1, 2)
+        self.mark = label("as of here", "heading")
+        self.mark.setAlignment(Qt.AlignmentFlag.AlignRight)
+        self.mark.hide()
+        grid.addWidget(self.mark, 4, 0, 1, 3)
+
+    def _buttons(self) -> QWidget:
+        box = QWidget()
+        row = QHBoxLayout(box)
+        row.setContentsMargins(0, 0, 0, 0)
+        row.setSpacing(4)
+        for text, tip, change in (
+            ("↑", "Move this line up (Alt+Up)", lambda: ledger_edits.move(self._desk, self.number, -1)),
+            ("↓", "Move this line down (Alt+Down)", lambda: ledger_edits.move(self._desk, self.number, 1)),
+            (
+                "As of",
+                "Show the field as of this line",
+                lambda: ledger_edits.as_of(self._desk, self.number),
+            ),
+            ("✕", "Take this line out (Delete)", lambda: ledger_edits.remove(self._desk, self.number)),
+        ):
+            button = QToolButton()
+            button.setText(text)
+            button.setToolTip(tip)
+            button.setAccessibleName(tip)
+            button.setProperty("role", "plain")
+            button.clicked.connect(change)
+            button.setSizePolicy(QSizePolicy.Policy.Maximum, QSizePolicy.Policy.Fixed)
+            row.addWidget(button)
+        row.addStretch()
+        return box
+
+    def draw(self, picture: Picture) -> None:
+        from fieldview.session.ledger import sentence
+
+        step = picture.session.ledger[self.number]
+        tally = next((t for t in picture.tallies if t.line == self.number and t.step == step.step), None)
+        beyond = picture.shown.as_of is not None and self.number >= picture.shown.as_of
+        words = sentence(step)
+        title = ledger_edits.title_of(type(step))
+        colour = picture_muted(self, beyond or not step.on)
+        head, rest = (title, words[len(title) :]) if words.startswith(title) else words.split(" ", 1)
+        gap = "" if rest.startswith((",", " ")) else " "
+        self.title.setText(f'<span style="color:{colour}"><b>{escaped(head)}</b>{gap}{escaped(rest)}</span>')
+        self.place.setText(str(self.number + 1))
+        self.switch.setChecked(step.on)
+        self.switch.setAccessibleName(f"Line {self.number + 1}, {words}")
+        self.setAccessibleName(f"Line {self.number + 1}: {words}")
+        self.outcome.setText(_outcome(step, tally, beyond, picture.stale))
+        chosen = picture.shown.line == self.number
+        set_property(self, "chosen", chosen)
+        if chosen:
+            units = Units.parse(picture.session.units) if picture.session.units else None
+            self.form.show_model(step, units)
+        self.form.setVisible(chosen)
+        self.buttons.setVisible(chosen)
+        self.mark.setVisible(picture.shown.as_of == self.number + 1)
+
+    def mousePressEvent(self, event):
+        if event.button() == Qt.MouseButton.LeftButton:
+            self._pressed = event.position().toPoint()
+            self.setFocus(Qt.FocusReason.MouseFocusReason)
+
+    def mouseMoveEvent(self, event):
+        if self._pressed is None or (event.position().toPoint() - self._pressed).manhattanLength() < 12:
+            return
+        self._pressed = None
+        drag, carried = QDrag(self), QMimeData()
+        carried.setData(LINE_MIME, str(self.number).encode())
+        drag.setMimeData(carried)
+        drag.setPixmap(self.grab())
+        drag.exec(Qt.DropAction.MoveAction)
+
+    def mouseReleaseEvent(self, event):
+        if self._pressed is not None and event.button() == Qt.MouseButton.LeftButton:
+            self.toggle()
+        self._pressed = None
+
+    def toggle(self) -> None:
+        """Open this line's settings, or close them."""
+        chosen = self._desk.picture.shown.line == self.number
+        self._desk.show(line=None if chosen else self.number)
+
+    def dragEnterEvent(self, event):
+        if event.mimeData().hasFormat(LINE_MIME):
+            event.acceptProposedAction()
+
+    def dropEvent(self, event):
+        origin = int(bytes(event.mimeData().data(LINE_MIME)))
+        event.acceptProposedAction()
+        ledger_edits.move(self._desk, origin, self.number - origin)
+
+    def keyPressEvent(self, event):
+        alt = event.modifiers() & Qt.KeyboardModifier.AltModifier
+        match event.key():
+            case Qt.Key.Key_Return | Qt.Key.Key_Enter | Qt.Key.Key_Space:
+                self.toggle()
+            case Qt.Key.Key_Up if alt:
+                ledger_edits.move(self._desk, self.number, -1)
+            case Qt.Key.Key_Down if alt:
+                ledger_edits.move(self._desk, self.number, 1)
+            case Qt.Key.Key_Delete:
+                ledger_edits.remove(self._desk, self.number)
+            case _:
+                super().keyPressEvent(event)
+
+
+def picture_muted(widget: QWidget, muted: bool) -> str:
+    """The colour of a line's words: quiet where it takes no part."""
+    panel = widget.parent()
+    while panel is not None and not isinstance(panel, Panel):
+        panel = panel.parent()
+    theme = panel.theme if panel is not None else None
+    return (theme.muted if muted else theme.text) if theme is not None else "palette(text)"
+
+
+def _outcome(step, tally, beyond: bool, stale: bool) -> str:
+    if not step.on:
+        return "switched off"
+    if beyond:
+        return "after the as-of mark"
+    if tally is None:
+        return "working …" if stale else ""
+    took = f" · {1e3 * tally.seconds:.1f} ms" if tally.seconds > 0 else ""
+    return f"{tally.outcome}{took}"
+
+
+def escaped(text: str) -> str:
+    return text.replace("&", "&amp;").replace("<", "&lt;").replace(">", "&gt;")

@@ -1,0 +1,105 @@
+"""Small item models of ready texts, for tables that only show."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from PySide6.QtCore import QAbstractTableModel, QModelIndex, Qt
+from PySide6.QtGui import QColor
+from PySide6.QtWidgets import QAbstractItemView, QHeaderView, QTableView
+
+from fieldview.gui.theme import ROW, font
+
+RAW = Qt.ItemDataRole.UserRole
+
+
+@dataclass(frozen=True)
+class Cell:
+    """One cell: its text, the bare value behind it, and how it is to be shown."""
+
+    text: str = ""
+    value: object = None
+    right: bool = False
+    muted: bool = False
+    tip: str = ""
+    colour: str = ""
+
+
+class CellModel(QAbstractTableModel):
+    """Rows of cells under column titles. New rows are put in whole; only what changed is repainted."""
+
+    def __init__(self, parent=None):
+        super().__init__(parent)
+        self.titles: tuple[str, ...] = ()
+        self.tips: tuple[str, ...] = ()
+        self.rows: tuple[tuple[Cell, ...], ...] = ()
+        self.muted = QColor()
+
+    def put(self, titles: tuple[str, ...], rows: tuple[tuple[Cell, ...], ...], tips=()) -> None:
+        if (titles, rows, tips) == (self.titles, self.rows, self.tips):
+            return
+        if titles == self.titles and len(rows) == len(self.rows) and rows:
+            self.rows, self.tips = rows, tips
+            self.dataChanged.emit(self.index(0, 0), self.index(len(rows) - 1, len(titles) - 1))
+            return
+        self.beginResetModel()
+        self.titles, self.rows, self.tips = titles, rows, tips
+        self.endResetModel()
+
+    def rowCount(self, parent=None):
+        return 0 if parent is not None and parent.isValid() else len(self.rows)
+
+    def columnCount(self, parent=None):
+        return 0 if parent is not None and parent.isValid() else len(self.titles)
+
+    def data(self, index: QModelIndex, role=Qt.ItemDataRole.DisplayRole):
+        if not index.isValid() or index.row() >= len(self.rows):
+            return None
+        cell = self.rows[index.row()][index.column()]
+        match role:
+            case Qt.ItemDataRole.DisplayRole:
+                return cell.text
+            case Qt.ItemDataRole.AccessibleTextRole:
+                return f"{self.titles[index.column()]}: {cell.text}".strip(": ")
+            case Qt.ItemDataRole.ToolTipRole:
+                return cell.tip or None
+            case Qt.ItemDataRole.ForegroundRole:
+                if cell.colour:
+                    return QColor(cell.colour)
+                return self.muted if cell.muted else None
+            case Qt.ItemDataRole.TextAlignmentRole:
+                side = Qt.AlignmentFlag.AlignRight if cell.right else Qt.AlignmentFlag.AlignLeft
+                return side | Qt.AlignmentFlag.AlignVCenter
+        return cell.value if role == RAW else None
+
+    def headerData(self, section, orientation, role=Qt.ItemDataRole.DisplayRole):
+        if orientation != Qt.Orientation.Horizontal or section >= len(self.titles):
+            return None
+        if role == Qt.ItemDataRole.DisplayRole:
+            return self.titles[section]
+        if role == Qt.ItemDataRole.ToolTipRole and section < len(self.tips):
+            return self.tips[section] or None
+        if role == Qt.ItemDataRole.TextAlignmentRole:
+            first = section == 0
+            side = Qt.AlignmentFlag.AlignLeft if first else Qt.AlignmentFlag.AlignRight
+            return side | Qt.AlignmentFlag.AlignVCenter
+        return None
+
+
+def dense(view: QTableView, *, header: bool = True) -> QTableView:
+    """Rows of 24 px without grid or frame."""
+    view.setShowGrid(False)
+    view.setFont(font())
+    view.setFrameShape(QTableView.Shape.NoFrame)
+    view.verticalHeader().hide()
+    view.verticalHeader().setDefaultSectionSize(ROW)
+    view.verticalHeader().setMinimumSectionSize(ROW - 4)
+    view.horizontalHeader().setVisible(header)
+    view.horizontalHeader().setHighlightSections(False)
+    view.horizontalHeader().setSectionResizeMode(QHeaderView.ResizeMode.ResizeToContents)
+    view.setSelectionBehavior(QAbstractItemView.SelectionBehavior.SelectRows)
+    view.setSelectionMode(QAbstractItemView.SelectionMode.SingleSelection)
+    view.setHorizontalScrollMode(QAbstractItemView.ScrollMode.ScrollPerPixel)
+    view.setTabKeyNavigation(False)
+    view.setWordWrap(False)
+    return view

@@ -1,0 +1,216 @@
+"""Which background work a picture still needs, and where its answers go."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from fieldview.gui import wording, work
+from fieldview.gui.canvas.arrows import typical_speed
+from fieldview.gui.jobs import LATER, Answer
+from fieldview.gui.picture import Card, MapOf, Measured, Picture
+
+
+class Pursuit:
+    """Compares what the picture shows with what it should show, and asks for the difference.
+
+    Every piece has a key made of all it depends on; work is asked for when the key changes.
+    """
+
+    def __init__(self, desk):
+        self._desk = desk
+        self._keys: dict[str, object] = {}
+
+    def forget(self) -> None:
+        self._keys.clear()
+
+    def pursue(self) -> None:
+        picture = self._desk.picture
+        if picture.run is None or self._desk.bench is None:
+            return
+        self._field(picture)
+        if picture.field is not None:
+            self._numbers(picture)
+            self._map(picture)
+            self._iso(picture)
+            self._cards(picture)
+
+    def _changed(self, kind: str, key: object) -> bool:
+        if self._keys.get(kind) == key:
+            return False
+        self._keys[kind] = key
+        return True
+
+    # -- what is needed ------------------------------------------------------------------------------
+
+    def _field(self, picture: Picture) -> None:
+        shown, session = picture.shown, picture.session
+        key = (field_parts(session), shown.frame, shown.source, shown.as_of)
+        if self._changed("field", key):
+            self._desk.jobs.submit(
+                "field",
+                work.evaluate,
+                session,
+                self._desk.bench,
+                shown.frame,
+                shown.source,
+                shown.as_of,
+                shown.quantity,
+                title=f"Evaluating frame {shown.frame + 1}",
+            )
+
+    def _numbers(self, picture: Picture) -> None:
+        session, field = picture.session, picture.field
+        wanted = _unmeasured(session, picture.measured)
+        key = (field, wanted, session.line)
+        if not self._changed("numbers", key):
+            return
+        if not wanted:
+            self._desk.jobs.cancel("numbers")
+            return
+        self._desk.jobs.submit(
+            "numbers", work.measure_fully, session, field, wanted, lane="derive", title="Measuring regions"
+        )
+
+    def _map(self, picture: Picture) -> None:
+        shown, field = picture.shown, picture.field
+        for kind, name in (("map", shown.quantity), ("tint", shown.arrow_colour)):
+            present = getattr(picture, kind)
+            there = present is not None and present.of is field and present.name == name
+            if not self._changed(kind, (field, name)) or name is None or there:
+                continue
+            self._desk.jobs.submit(kind, work.quick_map, field, name, lane="derive", title="Drawing the map")
+
+    def _iso(self, picture: Picture) -> None:
+        name = picture.shown.iso_lines
+        levels = picture.shown.levels.get(name)
+        if not self._changed("iso", (picture.field, name, levels)):
+            return
+        if name is None:
+            self._desk.jobs.cancel("iso")
+            return
+        self._desk.jobs.submit("iso", _iso_of, picture.field, name, levels, lane="derive", title="Iso-lines")
+
+    def _cards(self, picture: Picture) -> None:
+        field, shown = picture.field, picture.shown
+        if not self._changed("cards", (field, shown.quantity)):
+            return
+        names = work.available(field)
+        first = [shown.quantity] if shown.quantity in names else []
+        order = (*first, *(n for n in names if n not in first))
+        self._desk.jobs.submit(
+            "cards", work.deal_cards, field, order, lane="derive", urgency=LATER, title="Quantities"
+        )
+
+    # -- what came -----------------------------------------------------------------------------------
+
+    def answered(self, answer: Answer) -> None:
+        getattr(self, f"_got_{answer.kind}")(answer.value)
+
+    def _got_field(self, got: work.Evaluated) -> None:
+        self._desk.bench = got.bench
+        picture = self._desk.picture
+        shares = picture.shares
+        if picture.shown.source == "frame" and picture.shown.as_of is None:
+            shares = {**shares, got.frame: work.measured_share(got.field)}
+        shown = picture.shown
+        changes = {}
+        if shown.speed is None and got.field.in_plane:
+            changes["speed"] = reference_speed(typical_speed(got.field))
+        names = work.available(got.field)
+        if shown.quantity not in names and names:
+            changes["quantity"] = "w" if "w" in names else names[0]
+        if got.map is not None and got.map.name not in shown.levels:
+            changes["levels"] = {**shown.levels, got.map.name: levels_of(got.map)}
+        measured = {r.name: got.measured[r.name] for r in picture.session.regions if r.name in got.measured}
+        self._desk.update(
+            field=got.field,
+            field_frame=got.frame,
+            tallies=got.tallies,
+            prepared=got.prepared,
+            map=got.map,
+            measured=measured,
+            shares=shares,
+            shown=picture.showing(**changes).shown,
+        )
+
+    def _got_numbers(self, got: Measured) -> None:
+        measured = {**self._desk.picture.measured, got.region.name: got}
+        # the request was for these very regions; mark them as served before the picture asks again
+        wanted = _unmeasured(self._desk.picture.session, measured)
+        self._keys["numbers"] = (self._desk.picture.field, wanted, self._desk.picture.session.line)
+        self._desk.update(measured=measured)
+
+    def _got_map(self, got: MapOf) -> None:
+        self._desk.update(map=got, shown=self._with_levels(got))
+
+    def _got_tint(self, got: MapOf) -> None:
+        self._desk.update(tint=got, shown=self._with_levels(got))
+
+    def _got_iso(self, got) -> None:
+        self._desk.update(iso=got)
+
+    def _got_cards(self, got) -> None:
+        if isinstance(got, MapOf):
+            if self._desk.picture.map is not None and got.name == self._desk.picture.map.name:
+                self._desk.update(map=got)
+        elif isinstance(got, Card):
+            self._desk.update(cards={**self._desk.picture.cards, got.name: got})
+
+    def _got_follow(self, got) -> None:
+        frame, share, rows = got
+        traces = {**self._desk.picture.traces, frame: rows}
+        self._desk.update(traces=traces, shares={**self._desk.picture.shares, frame: share})
+
+    def _with_levels(self, got: MapOf):
+        shown = self._desk.picture.shown
+        if got.name in shown.levels:
+            return shown
+        return self._desk.picture.showing(levels={**shown.levels, got.name: levels_of(got)}).shown
+
+
+def field_parts(session) -> tuple:
+    """What of a session the evaluated field depends on."""
+    return (session.run, session.units, session.ledger, session.error_model, session.derivative)
+
+
+def levels_of(shown: MapOf) -> tuple[float, float]:
+    """A round colour-bar range for a map, see `levels_of_values`."""
+    return levels_of_values(shown.values, shown.kind)
+
+
+def levels_of_values(values: np.ndarray, kind: str) -> tuple[float, float]:
+    """A round colour-bar range that few values exceed; symmetric where the quantity has a sign."""
+    values = values[np.isfinite(values)]
+    if values.size == 0:
+        return (0.0, 1.0)
+    if kind == "cyclic":
+        return (-np.pi, np.pi)
+    if kind == "signed":
+        reach = wording.round_up(float(np.percentile(np.abs(values), 99.5)))
+        return (-reach, reach)
+    low, high = (float(v) for v in np.percentile(values, [0.5, 99.5]))
+    if 0 <= low < 0.5 * high or high <= low:
+        return (0.0, wording.round_up(high))
+    step = wording.nice_step(high - low, 8)
+    return (float(np.floor(low / step) * step), float(np.ceil(high / step) * step))
+
+
+def reference_speed(typical: float) -> float:
+    """A round speed near the typical one, for the reference arrow."""
+    step = wording.nice_step(typical, 1) if typical > 0 else 1.0
+    return step if step <= typical * 1.5 else step / 2
+
+
+def _iso_of(field, name, levels):
+    shown = None if levels else work.quick_map(field, name)
+    low, high = levels or (levels_of(shown) if shown else (0.0, 1.0))
+    return work.iso_lines(field, name, wording.nice_step(high - low, 12))
+
+
+def _unmeasured(session, measured) -> tuple:
+    """The regions whose full numbers are not there yet."""
+
+    def holds(found: Measured | None, region) -> bool:
+        return found is not None and found.whole and found.region == region and found.line == session.line
+
+    return tuple(r for r in session.regions if not holds(measured.get(r.name), r))

@@ -1,0 +1,235 @@
+"""The main window: panels around the canvas, actions over the desk."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+from PySide6.QtCore import QByteArray, QEvent, QSize, Qt
+from PySide6.QtGui import QGuiApplication, QKeyEvent
+from PySide6.QtWidgets import (
+    QApplication,
+    QHBoxLayout,
+    QMainWindow,
+    QSplitter,
+    QStackedWidget,
+    QToolBar,
+    QVBoxLayout,
+    QWidget,
+)
+
+from fieldview.gui import places, theme
+from fieldview.gui.actions import Actions
+from fieldview.gui.canvas.showing import Showing
+from fieldview.gui.canvas.view import Canvas
+from fieldview.gui.commands import all_commands
+from fieldview.gui.desk import Desk
+from fieldview.gui.icons import icon, icon_folder
+from fieldview.gui.panels.banner import Banner
+from fieldview.gui.panels.ledger import Ledger
+from fieldview.gui.panels.quantities import Quantities
+from fieldview.gui.panels.readout import Readout
+from fieldview.gui.panels.regions import Regions
+from fieldview.gui.panels.start import Start
+from fieldview.gui.panels.time_strip import TimeStrip
+from fieldview.gui.status_line import StatusLine
+from fieldview.gui.style import style_sheet
+from fieldview.gui.tools import TOOLS
+
+WORKING_KEYS = (Qt.Key.Key_Return, Qt.Key.Key_Enter, Qt.Key.Key_Escape, Qt.Key.Key_Backspace)
+
+
+class MainWindow(QMainWindow):
+    """The window. Its state is the desk's picture; ``session`` and ``idle`` are for tests and tools."""
+
+    def __init__(self):
+        super().__init__()
+        self.setObjectName("loopflux")
+        self.setWindowTitle("Loopflux")
+        self.setMinimumSize(900, 560)
+        self.resize(1280, 720)
+        self.setAcceptDrops(True)
+        self.desk = Desk(self)
+        self.theme = theme.of_desktop()
+        self.actions_table = Actions(self, all_commands())
+        self._build()
+        self.tools = {tool.id: tool.make(self.desk) for tool in TOOLS}
+        self.desk.redrawn.connect(self._redraw)
+        QGuiApplication.styleHints().colorSchemeChanged.connect(self._follow_desktop)
+        self.set_theme(self.theme)
+        self._restore()
+        self._redraw()
+        self.destroyed.connect(self.desk.jobs.close)
+
+    # -- for tests and tools -------------------------------------------------------------------------
+
+    @property
+    def session(self):
+        """The current session value, or None with an empty window."""
+        return self.desk.picture.session
+
+    @property
+    def idle(self) -> bool:
+        """True when no background work is pending."""
+        return self.desk.jobs.idle
+
+    def open(self, paths) -> None:
+        """Open a session file or the files of a run."""
+        paths = [Path(path) for path in paths]
+        if paths:
+            self.desk.open(paths)
+            places.add_recent(paths[0] if len(paths) == 1 else paths[0].parent)
+
+    # -- building ------------------------------------------------------------------------------------
+
+    def _build(self):
+        self.actions_table.fill(self.menuBar())
+        self.canvas = Canvas()
+        self.showing = Showing(self.canvas)
+        self.ledger, self.quantities = Ledger(self.desk), Quantities(self.desk)
+        self.readout, self.regions = Readout(self.desk), Regions(self.desk)
+        self.time_strip = TimeStrip(self.desk)
+        self.canvas.play_tapped.connect(self.time_strip.toggle_playing)
+        self.tool_bar = self._tool_bar()
+        self._pages = QStackedWidget()
+        self.start = Start(self.actions_table.run, self.open)
+        self._pages.addWidget(self.start)
+        self._pages.addWidget(self._work_page())
+        self.setCentralWidget(self._pages)
+        self.banner = Banner(self.desk, self.actions_table.run, self._pages)
+        self.status = StatusLine(self.desk)
+        self.setStatusBar(self.status)
+        self.actions_table.bind("canvas", self.canvas, self.time_strip)
+
+    def _tool_bar(self) -> QToolBar:
+        bar = QToolBar("Tools")
+        bar.setObjectName("tools")
+        bar.setOrientation(Qt.Orientation.Vertical)
+        bar.setIconSize(QSize(20, 20))
+        bar.setToolButtonStyle(Qt.ToolButtonStyle.ToolButtonIconOnly)
+        for tool in TOOLS:
+            action = self.actions_table[f"tool.{tool.id}"]
+            bar.addAction(action)
+            bar.widgetForAction(action).setFocusPolicy(Qt.FocusPolicy.TabFocus)
+            bar.widgetForAction(action).setAccessibleName(f"{tool.title} tool")
+        return bar
+
+    def _work_page(self) -> QWidget:
+        middle = QWidget()
+        column = QVBoxLayout(middle)
+        column.setContentsMargins(0, 0, 0, 0)
+        column.setSpacing(0)
+        row = QHBoxLayout()
+        row.setSpacing(0)
+        row.addWidget(self.tool_bar)
+        row.addWidget(self.canvas, 1)
+        column.addLayout(row, 1)
+        column.addWidget(self.time_strip)
+        right = _splitter(Qt.Orientation.Vertical, (self.quantities, self.readout), (3, 2))
+        top = _splitter(Qt.Orientation.Horizontal, (self.ledger, middle, right), (0, 1, 0))
+        top.setSizes([236, 790, 252])
+        whole = _splitter(Qt.Orientation.Vertical, (top, self._lower()), (1, 0))
+        whole.setSizes([490, 160])
+        self._splitters = {"right": right, "top": top, "whole": whole}
+        return whole
+
+    def _lower(self) -> QWidget:
+        return self.regions
+
+    # -- the one way back: a picture is drawn --------------------------------------------------------
+
+    def _redraw(self):
+        picture = self.desk.picture
+        self._pages.setCurrentIndex(0 if picture.session is None else 1)
+        self.canvas.tool = self.tools[picture.shown.tool]
+        self.showing.draw(picture)
+        for panel in (self.ledger, self.quantities, self.readout, self.regions, self.time_strip):
+            panel.draw(picture)
+        self.status.draw(picture)
+        self.status.hint.setText(self.canvas.tool.hint if picture.session is not None else "")
+        self.banner.draw(picture)
+        self.actions_table.draw(picture)
+        self.setWindowTitle(title_of(picture))
+        self.setWindowModified(picture.unsaved)
+
+    def set_theme(self, new: theme.Theme) -> None:
+        self.theme = new
+        QApplication.instance().setPalette(theme.palette(new))
+        self.setStyleSheet(style_sheet(new, (icon_folder() / "chevron.svg").as_posix()))
+        self.setWindowIcon(icon("loopflux", new))
+        self.actions_table.dress(lambda name: icon(name, new))
+        for panel in (self.ledger, self.quantities, self.readout, self.regions, self.time_strip):
+            panel.set_theme(new)
+        self.showing.set_theme(new)
+        self._redraw()
+
+    def _follow_desktop(self, *_):
+        self.set_theme(theme.of_desktop())
+
+    # -- the window itself ---------------------------------------------------------------------------
+
+    def dragEnterEvent(self, event):
+        if event.mimeData().hasUrls():
+            event.acceptProposedAction()
+
+    def dropEvent(self, event):
+        paths = [url.toLocalFile() for url in event.mimeData().urls() if url.isLocalFile()]
+        if paths:
+            event.acceptProposedAction()
+            self.open(paths)
+
+    def keyPressEvent(self, event: QKeyEvent):
+        # a drawing under way can be closed, shortened or dropped wherever the focus happens to be
+        if event.key() in WORKING_KEYS and self.canvas.tool is not None and self.canvas.tool.busy:
+            self.canvas.keyPressEvent(event)
+        elif event.key() == Qt.Key.Key_Escape and self.desk.picture.notice is not None:
+            self.desk.dismiss()
+        else:
+            super().keyPressEvent(event)
+
+    def closeEvent(self, event):
+        places.remember(
+            geometry=bytes(self.saveGeometry().toBase64()).decode(),
+            splitters={name: s.sizes() for name, s in self._splitters.items()},
+        )
+        self.time_strip.stop()
+        self.desk.jobs.close()
+        event.accept()
+
+    def find_command(self) -> None:
+        """Open the command finder."""
+        from fieldview.gui.finder import Finder
+
+        Finder(self.actions_table, self).open()
+
+    def changeEvent(self, event):
+        if event.type() == QEvent.Type.WindowTitleChange:
+            self.setAccessibleName(self.windowTitle())
+        super().changeEvent(event)
+
+    def _restore(self):
+        kept = places.remembered()
+        if isinstance(kept.get("geometry"), str):
+            self.restoreGeometry(QByteArray.fromBase64(kept["geometry"].encode()))
+        sizes = kept.get("splitters")
+        for name, splitter in self._splitters.items():
+            wanted = sizes.get(name) if isinstance(sizes, dict) else None
+            if isinstance(wanted, list) and len(wanted) == splitter.count() and all(n > 0 for n in wanted):
+                splitter.setSizes([int(n) for n in wanted])
+        self.start.show_recent(places.recent())
+
+
+def title_of(picture) -> str:
+    if picture.session is None:
+        return "Loopflux"
+    name = picture.path.name if picture.path else picture.session.run.files[0]
+    return f"{name}[*] — Loopflux"
+
+
+def _splitter(orientation, widgets, stretch) -> QSplitter:
+    splitter = QSplitter(orientation)
+    splitter.setHandleWidth(1)
+    splitter.setChildrenCollapsible(False)
+    for place, (widget, share) in enumerate(zip(widgets, stretch, strict=True)):
+        splitter.addWidget(widget)
+        splitter.setStretchFactor(place, share)
+    return splitter
