@@ -13,7 +13,9 @@ import numpy as np
 import scipy.sparse as sp
 
 from fieldview.compute.grid import Grid
-from fieldview.compute.stencils import SCHEMES, Choice, Scheme, across_weights, scheme_named
+from fieldview.compute.lines import Line
+from fieldview.compute.stencil_covariance import noise_gain
+from fieldview.compute.stencils import SCHEMES, Scheme, across_weights, scheme_named
 
 __all__ = ["SCHEMES", "Gradient", "derivative", "derivative_rows", "gradient", "noise_gain"]
 
@@ -68,7 +70,7 @@ def derivative(
     """
     rule = scheme_named(scheme)
     values = np.asarray(values, float)
-    line = _Line(grid, along)
+    line = Line(grid, along)
     slope = line.first_choice(values, rule)
     absent = np.isnan(slope)
     invalid = np.isnan(values)
@@ -110,139 +112,10 @@ def derivative_rows(
     """
     rule = scheme_named(scheme)
     nodes = np.arange(valid.size) if nodes is None else np.asarray(nodes, np.intp)
-    return tuple(_rows(_Line(grid, along), rule, valid.ravel(), nodes) for along in ("x", "y"))
+    return tuple(_rows(Line(grid, along), rule, valid.ravel(), nodes) for along in ("x", "y"))
 
 
-def noise_gain(
-    scheme: str, *, correlation: tuple[float, float] = (1.0, 1.0), quantity: str = "vorticity"
-) -> float:
-    """Standard uncertainty of a derivative quantity in units of sigma / spacing, far from gaps and edges.
-
-    Parameters
-    ----------
-    scheme : str
-    correlation : (float, float)
-        Nodes along x and y over which errors are correlated.
-    quantity : "vorticity", "divergence", "d_dx" or "d_dy"
-        Errors of u and v are independent of each other and have the same sigma.
-    """
-    grid = Grid(np.arange(9.0), np.arange(9.0))
-    rows = derivative_rows(grid, np.ones((9, 9), bool), scheme=scheme, nodes=np.array([40]))
-    axes_taken = {"vorticity": (0, 1), "divergence": (0, 1), "d_dx": (0,), "d_dy": (1,)}[quantity]
-    from fieldview.compute.covariance import functional_variance
-
-    sigma = np.ones((9, 9))
-    variances = [
-        functional_variance(rows[axis].toarray().reshape(9, 9), sigma, correlation) for axis in axes_taken
-    ]
-    return float(np.sqrt(sum(variances)))
-
-
-class _Line:
-    """One of the lattice's two directions: neighbours and weights along it."""
-
-    def __init__(self, grid: Grid, along: str):
-        self.ny, self.nx = grid.shape
-        self.is_x = along == "x"
-        self.axis, self.cross = (grid.x, grid.y) if self.is_x else (grid.y, grid.x)
-        self.is_uniform = grid.is_uniform[0 if self.is_x else 1]
-        self.stride = 1 if self.is_x else self.nx
-
-    def along(self, array: np.ndarray) -> np.ndarray:
-        """A view of an array (ny, nx) whose last axis runs along this direction."""
-        return array if self.is_x else array.T
-
-    def first_choice(self, values: np.ndarray, rule: Scheme) -> np.ndarray:
-        """The scheme's own stencil, NaN where it reaches over the edge or a NaN."""
-        slope = np.empty(values.shape)
-        self._apply(rule.choices[0], self.along(values), self.along(slope))
-        if not rule.across:
-            return slope
-        slope[np.isnan(values)] = np.nan
-        return _averaged_across(slope, self.cross, self.is_x)
-
-    def _apply(self, choice: Choice, source: np.ndarray, target: np.ndarray) -> None:
-        size = self.axis.size
-        low, high = -choice.first, size - choice.last
-        target[:, : min(low, size)] = np.nan
-        target[:, max(high, 0) :] = np.nan
-        if high <= low:
-            return
-        inner = target[:, low:high]
-        nodes = np.arange(low, high)
-        weights = self._uniform(choice)[None, :] if self.is_uniform else choice.weights(self.axis, nodes)
-        shifted = [source[:, low + k : high + k] for k in range(choice.first, choice.last + 1)]
-        if self.is_uniform:
-            _antisymmetric_sum(shifted, weights[0], inner)
-        else:
-            _weighted_sum(shifted, weights, inner)
-
-    def _uniform(self, choice: Choice) -> np.ndarray:
-        """Weights (count,) on an evenly spaced axis."""
-        spacing = (self.axis[-1] - self.axis[0]) / max(self.axis.size - 1, 1) or 1.0
-        return _unit_weights(choice) / spacing
-
-    def weights(self, choice: Choice, flat: np.ndarray) -> np.ndarray:
-        """Weights (k, count) at flat nodes, all of which the stencil fits."""
-        if self.is_uniform:
-            return np.broadcast_to(self._uniform(choice), (flat.size, choice.count))
-        positions = self.position(flat)
-        there, which = np.unique(positions, return_inverse=True)
-        return choice.weights(self.axis, there)[which]
-
-    def position(self, flat: np.ndarray) -> np.ndarray:
-        return flat % self.nx if self.is_x else flat // self.nx
-
-    def members(self, flat: np.ndarray, choice: Choice) -> tuple[np.ndarray, np.ndarray]:
-        """Which of the nodes the stencil fits, bool (k,), and its flat nodes for those, (fitting, count)."""
-        position = self.position(flat)
-        inside = (position + choice.first >= 0) & (position + choice.last < self.axis.size)
-        steps = np.arange(choice.first, choice.last + 1) * self.stride
-        return inside, flat[inside][:, None] + steps
-
-
-def _unit_weights(choice: Choice) -> np.ndarray:
-    """Weights (count,) on an axis of spacing 1, with round-off that stands for zero removed."""
-    axis = np.arange(float(choice.count)) + choice.first
-    weights = choice.weights(axis, np.array([-choice.first]))[0]
-    return np.where(np.abs(weights) < 1e-12, 0.0, weights)
-
-
-def _antisymmetric_sum(shifted, weights, out) -> None:
-    """Sum of an odd number of shifted arrays with weights that are antisymmetric about the middle."""
-    half = len(shifted) // 2
-    spare = None
-    for k in range(1, half + 1):
-        term = out if k == 1 else spare
-        if term is None:
-            spare = term = np.empty_like(out)
-        np.subtract(shifted[half + k], shifted[half - k], out=term)
-        term *= weights[half + k]
-        if term is not out:
-            out += term
-
-
-def _weighted_sum(shifted, weights, out) -> None:
-    """Sum of shifted arrays with weights (nodes, count) along their last axis."""
-    np.multiply(shifted[0], weights[:, 0], out=out)
-    spare = np.empty_like(out)
-    for k in range(1, len(shifted)):
-        np.multiply(shifted[k], weights[:, k], out=spare)
-        out += spare
-
-
-def _averaged_across(slope: np.ndarray, cross: np.ndarray, is_x: bool) -> np.ndarray:
-    """Average of each line's slope with its two neighbours'; NaN at the first and last line."""
-    lines = slope if is_x else slope.T
-    averaged = np.full(slope.shape, np.nan)
-    if cross.size > 2:
-        weights = across_weights(cross)
-        target = averaged if is_x else averaged.T
-        target[1:-1] = sum(lines[k : cross.size - 2 + k] * weights[:, k, None] for k in range(3))
-    return averaged
-
-
-def _rows(line: _Line, rule: Scheme, valid: np.ndarray, nodes: np.ndarray) -> sp.csr_array:
+def _rows(line: Line, rule: Scheme, valid: np.ndarray, nodes: np.ndarray) -> sp.csr_array:
     rows, columns, weights = [], [], []
 
     def add(numbers, members, values):
@@ -264,7 +137,7 @@ def _rows(line: _Line, rule: Scheme, valid: np.ndarray, nodes: np.ndarray) -> sp
     return sp.csr_array(entries, shape=(nodes.size, valid.size))
 
 
-def _add_across(line: _Line, rule: Scheme, valid, nodes, open_, add) -> np.ndarray:
+def _add_across(line: Line, rule: Scheme, valid, nodes, open_, add) -> np.ndarray:
     """Adds the rows whose three lines are all valid; returns the row numbers that are left."""
     choice = rule.choices[0]
     lines = line.nx if line.is_x else 1  # flat step from one line to the next

@@ -5,9 +5,8 @@ from __future__ import annotations
 from functools import cached_property
 
 import numpy as np
-import scipy.sparse as sp
 
-from fieldview.compute.derivatives import derivative, derivative_rows
+from fieldview.compute.derivatives import derivative
 from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field
 
@@ -106,30 +105,3 @@ class Local:
     def _check_plane(self) -> None:
         if not self.field.grid.is_plane:
             raise InputError("the derivatives need at least two rows and two columns of nodes")
-
-    def rows(self, slopes: dict, nodes: np.ndarray) -> dict[str, sp.csr_array]:
-        """For each component the rows (k, ny * nx) of a quantity with these slopes at flat ``nodes``.
-
-        The change of the quantity for small changes of the component's node values.
-        """
-        count = self.field.status.size
-        rows: dict[str, sp.csr_array] = {}
-
-        def add(component, matrix):
-            rows[component] = rows[component] + matrix if component in rows else matrix
-
-        lattice = None
-        for name, slope in slopes.items():
-            scale = np.broadcast_to(slope, self.field.grid.shape).ravel()[nodes]
-            if name not in DERIVATIVES:
-                entries = (scale, (np.arange(nodes.size), nodes))
-                add(name, sp.csr_array(entries, shape=(nodes.size, count)))
-                continue
-            if lattice is None:
-                valid = self.field.valid
-                lattice = derivative_rows(self.field.grid, valid, scheme=self.scheme, nodes=nodes)
-            component, axis = DERIVATIVES[name]
-            for factor, matrix in zip(self.axes[axis], lattice, strict=True):
-                if factor != 0:
-                    add(component, sp.csr_array(sp.diags_array(factor * scale) @ matrix))
-        return rows

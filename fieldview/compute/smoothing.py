@@ -90,16 +90,19 @@ def _savitzky_golay(grid: Grid, valid: np.ndarray, width: float) -> sp.csr_array
     window = round(width)
     if window != width or window < 3 or window % 2 == 0:
         raise InputError(f"the window of a Savitzky-Golay smoothing is {width}; give an odd number from 3 on")
-    along_x = _local_parabolas(grid.x, valid, window, stride=1)
-    along_y = _local_parabolas(grid.y, valid.T, window, stride=grid.x.size)
+    ny, nx = valid.shape
+    along_x = _local_parabolas(grid.x, valid, window, starts=np.arange(ny) * nx, stride=1)
+    along_y = _local_parabolas(grid.y, valid.T, window, starts=np.arange(nx), stride=nx)
     return sp.csr_array(along_y @ along_x)
 
 
-def _local_parabolas(axis: np.ndarray, lines: np.ndarray, window: int, *, stride: int) -> sp.csr_array:
-    """Least-squares parabolas along one direction, (n, n), evaluated at the node itself.
+def _local_parabolas(
+    axis: np.ndarray, lines: np.ndarray, window: int, *, starts: np.ndarray, stride: int
+) -> sp.csr_array:
+    """Parabolas along one direction, (n, n), fitted to the valid nodes of a window, taken at the node itself.
 
-    The window is shifted inward at the ends of the axis. From it the nodes without a gap between them and
-    the node itself are taken; fewer than three of these give a straight line, or the value itself.
+    The window is shifted inward at the ends of the axis. A node with fewer than three valid nodes in its
+    window keeps its value.
 
     Parameters
     ----------
@@ -107,32 +110,23 @@ def _local_parabolas(axis: np.ndarray, lines: np.ndarray, window: int, *, stride
     lines : bool ndarray (count, size)
         Valid nodes, line by line.
     window : int
+    starts : int ndarray (count,)
+        Flat number of each line's first node.
     stride : int
         Flat distance of neighbours along the line.
     """
-    count, size = lines.shape
+    size = axis.size
     window = min(window, size)
-    across = lines.size // size if stride != 1 else 0
     rows, columns, weights = [], [], []
     for place in range(size):
         first = min(max(place - window // 2, 0), size - window)
-        members = np.arange(first, first + window)
-        there = lines[:, members] & lines[:, [place]]
-        own = place - first
-        # cut off what lies behind a gap, seen from the node
-        there[:, own:] = np.logical_and.accumulate(there[:, own:], axis=1)
-        there[:, : own + 1] = np.logical_and.accumulate(there[:, own::-1], axis=1)[:, ::-1]
-        patterns, which = np.unique(there, axis=0, return_inverse=True)
-        for number, pattern in enumerate(patterns):
-            if not pattern.any():
-                continue
-            lane = np.flatnonzero(which.ravel() == number)
-            taken = members[pattern]
-            fit = _fit_weights(axis[taken] - axis[place])
-            base = lane * (1 if across else size)
+        there = lines[:, first : first + window]
+        for pattern in np.unique(there[lines[:, place]], axis=0):
+            base = starts[lines[:, place] & (there == pattern).all(axis=1)]
+            taken = first + np.flatnonzero(pattern)
             rows.append(np.repeat(base + place * stride, taken.size))
             columns.append((base[:, None] + taken * stride).ravel())
-            weights.append(np.tile(fit, lane.size))
+            weights.append(np.tile(_fit_weights(axis[taken] - axis[place]), base.size))
     if not rows:
         return sp.csr_array((lines.size, lines.size))
     entries = (np.concatenate(weights), (np.concatenate(rows), np.concatenate(columns)))
@@ -140,7 +134,7 @@ def _local_parabolas(axis: np.ndarray, lines: np.ndarray, window: int, *, stride
 
 
 def _fit_weights(arms: np.ndarray) -> np.ndarray:
-    """Weights (k,) of the value at 0 of the parabola (or less, if there are fewer) through points at arms."""
+    """Weights (k,) of the value at 0 of the parabola that fits points at arms (0 is among them)."""
     if arms.size < 3:
         return (arms == 0).astype(float)
     reach = np.abs(arms).max()

@@ -31,6 +31,10 @@ class Choice:
     def last(self) -> int:
         return self.first + self.count - 1
 
+    @property
+    def offsets(self) -> range:
+        return range(self.first, self.last + 1)
+
     def weights(self, axis: np.ndarray, nodes: np.ndarray) -> np.ndarray:
         """Weights (len(nodes), count) at these nodes of the axis. [1/length]"""
         members = nodes[:, None] + np.arange(self.first, self.last + 1)
