@@ -73,8 +73,20 @@ class Actions:
 
     def __init__(self, window: QWidget, commands: tuple[Command, ...]):
         self.commands = {command.id: command for command in commands}
-        self._actions = {command.id: _action(window, command) for command in commands}
+        self._actions = {command.id: self._made(window, command) for command in commands}
         self._menus: dict[tuple[str, str], QMenu] = {}
+
+    def _made(self, window: QWidget, command: Command) -> QAction:
+        action = _action(window, command)
+
+        def run(_=False) -> None:
+            command.run(window)
+            if command.checked is not None:
+                # Qt has already turned the mark; what it shows is the picture's to say
+                action.setChecked(command.checked(window.desk.picture))
+
+        action.triggered.connect(run)
+        return action
 
     def __getitem__(self, id: str) -> QAction:
         return self._actions[id]
@@ -120,6 +132,7 @@ class Actions:
 
 
 def _action(window: QWidget, command: Command) -> QAction:
+    """The action of a command, not yet connected."""
     action = QAction(command.title, window)
     action.setObjectName(command.id)
     if command.shortcut:
@@ -131,5 +144,4 @@ def _action(window: QWidget, command: Command) -> QAction:
     keys = f" ({command.shortcut.split(' | ')[0]})" if command.shortcut else ""
     action.setToolTip(f"{plain}{keys}" + (f"\n{command.hint}" if command.hint else ""))
     action.setStatusTip(command.hint)
-    action.triggered.connect(lambda _=False: command.run(window))
     return action

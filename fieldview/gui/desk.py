@@ -234,10 +234,9 @@ class Desk(QObject):
         self.bench = opened.bench
         frame = min(self.picture.shown.frame, opened.facts.frames - 1)
         session = opened.session.in_folder(self.picture.session.folder)
-        saved = session if self.picture.path is not None else None
         picture = self.picture.showing(frame=frame)
         notice = Notice(opened.facts.notes[0], grave=False) if opened.facts.notes else None
-        self._put(picture.with_(history=History(session), saved=saved, run=opened.facts, notice=notice))
+        self._put(picture.with_(history=History(session), saved=session, run=opened.facts, notice=notice))
 
     def _failed(self, answer: Answer) -> None:
         if answer.kind == "open" and answer.questions:

@@ -8,7 +8,7 @@ from typing import Any, Literal, Union, get_args, get_origin
 
 from pydantic import BaseModel, ValidationError
 from PySide6.QtCore import Qt
-from PySide6.QtWidgets import QComboBox, QFormLayout, QHBoxLayout, QLineEdit, QWidget
+from PySide6.QtWidgets import QComboBox, QFormLayout, QHBoxLayout, QLabel, QLineEdit, QWidget
 
 from fieldview.compute.units import Units
 from fieldview.gui import wording
@@ -32,7 +32,7 @@ class ModelForm(QWidget):
         self._rows.setVerticalSpacing(3)
         self._rows.setFieldGrowthPolicy(QFormLayout.FieldGrowthPolicy.AllNonFixedFieldsGrow)
         self._rows.setLabelAlignment(Qt.AlignmentFlag.AlignLeft)
-        self._problem = label("", "muted", wrap=True)
+        self._problem: QLabel | None = None
 
     def show_model(self, model: BaseModel, units: Units | None) -> None:
         """Fill the form; rows are made anew only for another kind of model."""

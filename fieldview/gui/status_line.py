@@ -20,7 +20,7 @@ CANCELLABLE = ("follow", "export", "cards")
 class StatusLine(QStatusBar):
     def __init__(self, desk, parent=None):
         super().__init__(parent)
-        self._desk = desk
+        self._desk, self._field = desk, None
         self.setSizeGripEnabled(False)
         self.setAccessibleName("Status line")
         self.frame, self.shares, self.hint, self.saved = QLabel(), QLabel(), QLabel(), QLabel()
@@ -33,11 +33,14 @@ class StatusLine(QStatusBar):
 
     def draw(self, picture: Picture) -> None:
         self.frame.setText(frame_text(picture))
-        self.shares.setText(share_text(picture))
+        if picture.field is not self._field:
+            self._field = picture.field
+            self.shares.setText(share_text(picture))
         if picture.session is None:
             self.saved.setText("")
         else:
-            self.saved.setText("not saved" if picture.unsaved else "saved")
+            kept = "saved" if picture.path is not None else "no session file yet"
+            self.saved.setText("not saved" if picture.unsaved else kept)
         self.work.draw(picture)
 
 

@@ -65,6 +65,8 @@ class Canvas(pg.GraphicsView):
 
     def _build(self):
         self.plot = pg.PlotItem(enableMenu=False)
+        # the plot's own menu is never shown, yet made: as a child it goes when the canvas goes
+        self.plot.ctrlMenu.setParent(self, self.plot.ctrlMenu.windowFlags())
         self.plot.hideButtons()
         self.setCentralItem(self.plot)
         self.view_box = self.plot.getViewBox()

@@ -101,7 +101,7 @@ class CardPainter(QStyledItemDelegate):
         size = held[2].size().scaled(box.size(), Qt.AspectRatioMode.KeepAspectRatio)
         target = QRect(box.topLeft(), size)
         target.moveCenter(box.center())
-        painter.drawImage(target, held[2].mirrored(False, True))
+        painter.drawImage(target, held[2].flipped(Qt.Orientation.Vertical))
 
     def _draw_words(self, painter, box, card, theme):
         stale = card.of is not self._panel.field

@@ -1,0 +1,186 @@
+"""Ledger, quantities, readout and time strip."""
+
+import numpy as np
+import pytest
+from PySide6.QtCore import Qt
+from PySide6.QtTest import QTest
+from PySide6.QtWidgets import QLineEdit
+
+from fieldview.gui.panels.quantities import CARD
+from fieldview.session.replay import Workbench, history
+from fieldview.session.steps import Fill, MedianTest, SpreadTest
+from tests.gui.conftest import FRAMES, action, key, move, settle
+
+
+def test_ledger_says_what_each_line_did(window):
+    tallies = Workbench(window.session).tallies(0)
+    for line, tally in zip(window.ledger.lines, tallies, strict=True):
+        assert tally.outcome in line.outcome.text()
+    assert "Median test" in window.ledger.lines[0].title.text()
+
+
+def test_a_switch_takes_a_line_out_and_undo_puts_it_back(window, qtbot):
+    rejected = window.desk.picture.tallies[0].counts["rejected"]
+    assert rejected >= 1
+    QTest.mouseClick(window.ledger.lines[0].switch, Qt.MouseButton.LeftButton)
+    settle(qtbot, window)
+    assert window.session.ledger[0].on is False
+    assert window.ledger.lines[0].outcome.text() == "switched off"
+    action(window, "edit.undo").trigger()
+    settle(qtbot, window)
+    assert window.desk.picture.tallies[0].counts["rejected"] == rejected
+
+
+def test_settings_open_in_place_and_edit_the_step(window, qtbot):
+    line = window.ledger.lines[0]
+    QTest.mouseClick(line, Qt.MouseButton.LeftButton)
+    assert line.form.isVisible()
+    entry = line.form.findChild(QLineEdit, "form.threshold")
+    entry.selectAll()
+    QTest.keyClicks(entry, "3,5")
+    QTest.keyClick(entry, Qt.Key.Key_Return)
+    assert window.session.ledger[0].threshold == 3.5
+    entry.selectAll()
+    QTest.keyClicks(entry, "-1")
+    QTest.keyClick(entry, Qt.Key.Key_Return)
+    assert window.session.ledger[0].threshold == 3.5, "what is not valid changes nothing"
+    assert entry.property("wrong") is True
+    assert "threshold" in line.form._problem.text()
+    action(window, "edit.undo").trigger()
+    assert window.session.ledger[0].threshold == 2.0
+    assert entry.text() == "2"
+
+
+def test_steps_are_added_moved_and_removed(window, qtbot):
+    menu = window.ledger.add.menu()
+    next(a for a in menu.actions() if a.text() == "Spread test").trigger()
+    assert [type(s) for s in window.session.ledger] == [MedianTest, Fill, SpreadTest]
+    line = window.ledger.lines[2]
+    QTest.keyClick(line, Qt.Key.Key_Up, Qt.KeyboardModifier.AltModifier)
+    assert [type(s) for s in window.session.ledger] == [MedianTest, SpreadTest, Fill]
+    QTest.keyClick(window.ledger.lines[1], Qt.Key.Key_Delete)
+    assert [type(s) for s in window.session.ledger] == [MedianTest, Fill]
+    settle(qtbot, window)
+
+
+def test_the_as_of_mark_shows_the_field_before_later_lines(window, qtbot):
+    from fieldview.compute.field import Status
+    from fieldview.gui import ledger_edits
+
+    assert window.desk.picture.field.count(Status.REJECTED) == 0
+    ledger_edits.as_of(window.desk, 0)
+    settle(qtbot, window)
+    assert window.desk.picture.field.count(Status.REJECTED) >= 1
+    assert window.ledger.lines[0].mark.isVisible()
+    assert "as-of" in window.ledger.lines[1].outcome.text()
+    ledger_edits.as_of(window.desk, 0)
+    settle(qtbot, window)
+    assert window.desk.picture.field.count(Status.REJECTED) == 0
+
+
+def test_cards_show_the_range_of_the_very_quantity(window, qtbot):
+    from fieldview.compute.quantities import quantity
+
+    cards = [window.quantities.model.index(i).data(CARD) for i in range(window.quantities.model.rowCount())]
+    assert [c.name for c in cards[:3]] == ["speed", "vorticity", "divergence"]
+    field = window.desk.picture.field
+    for card in cards:
+        values = quantity(field, card.name)
+        assert card.low == np.nanmin(values)
+        assert card.high == np.nanmax(values)
+
+
+def test_a_click_on_a_card_shows_its_map_and_buttons_its_lines(window, qtbot):
+    view = window.quantities.view
+    index = window.quantities.model.index(2)
+    QTest.mouseClick(view.viewport(), Qt.MouseButton.LeftButton, pos=view.visualRect(index).center())
+    settle(qtbot, window)
+    assert window.desk.picture.map.name == "divergence"
+    assert "divergence" in window.canvas.colour_bar._bar.label
+    QTest.mouseClick(window.quantities.iso, Qt.MouseButton.LeftButton)
+    settle(qtbot, window)
+    assert window.desk.picture.iso_now.name == "divergence"
+    QTest.mouseClick(window.quantities.tint, Qt.MouseButton.LeftButton)
+    settle(qtbot, window)
+    assert window.desk.picture.tint_now.name == "divergence"
+    QTest.mouseClick(window.quantities.iso, Qt.MouseButton.LeftButton)
+    assert window.desk.picture.shown.iso_lines is None
+
+
+def test_readout_tells_the_node_and_its_history(window):
+    window.canvas.setFocus()
+    move(window, 7 * 0.002, 5 * 0.002, held=False)
+    field = window.desk.picture.field
+    rows = dict((row[0].text, row[1].text) for row in window.readout.model.rows)
+    assert rows["node"] == "row 5, col. 7"
+    assert rows["status"] == "filled"
+    told = window.readout.history.text().lower()
+    for sentence in history(field, 5, 7):
+        assert sentence.lower() in told
+    assert "line 1" in told and "line 2" in told
+    move(window, -0.02, 0.03, held=False)
+    assert window.readout.history.text() == ""
+
+
+def test_arrow_keys_step_through_the_frames(window, qtbot):
+    for pressed, frame in (
+        (Qt.Key.Key_Right, 1),
+        (Qt.Key.Key_Right, 2),
+        (Qt.Key.Key_Left, 1),
+        (Qt.Key.Key_End, FRAMES - 1),
+        (Qt.Key.Key_Right, FRAMES - 1),
+        (Qt.Key.Key_Home, 0),
+    ):
+        key(window, pressed)
+        assert window.desk.picture.shown.frame == frame
+    settle(qtbot, window)
+    assert not action(window, "edit.undo").isEnabled(), "looking is no edit"
+
+
+def test_the_strip_is_scrubbed_with_the_mouse(window, qtbot):
+    ruler = window.time_strip.ruler
+    for frame in (3, 1):
+        at = ruler.rect().center()
+        at.setX(round(ruler.frame_x(frame)))
+        QTest.mouseClick(ruler, Qt.MouseButton.LeftButton, pos=at)
+        assert window.desk.picture.shown.frame == frame
+    settle(qtbot, window)
+    assert set(window.desk.picture.shares) >= {0, 1}
+
+
+def test_a_tap_on_space_plays(window, qtbot):
+    window.time_strip._clock.setInterval(5)
+    QTest.keyClick(window.canvas, Qt.Key.Key_Space)
+    assert window.time_strip.playing
+    seen = set()
+
+    def went_round():
+        seen.add(window.desk.picture.field_frame)
+        return len(seen) == FRAMES
+
+    qtbot.waitUntil(went_round, timeout=10_000)
+    QTest.keyClick(window.canvas, Qt.Key.Key_Space)
+    assert not window.time_strip.playing
+    settle(qtbot, window)
+
+
+def test_regions_are_followed_over_the_run(window, qtbot):
+    from fieldview.gui.panels.time_strip import trace_of
+    from fieldview.session.measure import measure
+
+    QTest.mouseClick(window.time_strip.follow, Qt.MouseButton.LeftButton)
+    settle(qtbot, window)
+    found = trace_of(window.desk.picture, "core")
+    printed = [f["regions"][0]["circulation"]["value"] for f in measure(window.session)]
+    assert [value for _, value, _ in found] == printed
+
+
+@pytest.mark.parametrize("source", ["mean"])
+def test_the_mean_is_shown_as_a_frame_like_any_other(window, qtbot, source):
+    from fieldview.session.measure import measure
+
+    QTest.mouseClick(window.time_strip._sources[source], Qt.MouseButton.LeftButton)
+    settle(qtbot, window)
+    printed = measure(window.session, frames="mean")[0]["regions"][0]
+    shown = window.desk.picture.measured_of(window.session.regions[0]).row
+    assert shown["circulation"] == printed["circulation"]
