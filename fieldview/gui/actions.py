@@ -47,6 +47,8 @@ class Command:
         Stable; the action's object name.
     enabled, checked, text : functions of the picture
         ``checked`` makes the action checkable; ``text`` gives a title that changes, as for Undo.
+    menu : str
+        One of `MENUS`, or "" for what only a banner offers.
     scope : "window" or "canvas"
         Where the shortcut works; "canvas" leaves arrow keys to tables and entries.
     group : str
@@ -98,6 +100,8 @@ class Actions:
         """Put every action into its menu, in the table's order."""
         menus = {name: menu_bar.addMenu(f"&{name}") for name in MENUS}
         for command in self.commands.values():
+            if not command.menu:
+                continue
             menu = menus[command.menu]
             if command.group:
                 key = (command.menu, command.group)

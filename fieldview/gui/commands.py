@@ -18,6 +18,10 @@ def run_commands() -> tuple[Command, ...]:
         Command("session.sample", "Try a sample", "Run", dialogs.open_sample),
         Command("session.save", "&Save", "Run", save, "Ctrl+S", "save", has_session, separated=True),
         Command("session.save_as", "Save &as …", "Run", dialogs.save_as, "Ctrl+Shift+S", enabled=has_session),
+        Command("window.save_and_close", "Save and close", "", lambda w: w.save_and_close()),
+        Command("window.discard", "Close without saving", "", lambda w: w.discard()),
+        Command("recovery.take", "Recover", "", lambda w: w.recover()),
+        Command("recovery.drop", "Discard", "", lambda w: w.forget_lost()),
         Command("window.close", "&Quit", "Run", lambda w: w.close(), "Ctrl+Q", separated=True),
     )
 

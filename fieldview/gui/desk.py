@@ -51,13 +51,13 @@ class Desk(QObject):
         except InputError as error:
             self.complain(str(error))
 
-    def adopt(self, session: Session, path: Path | None) -> None:
+    def adopt(self, session: Session, path: Path | None, *, saved: bool = True) -> None:
         """Take up a session: it becomes the first of a new history, and its run is opened."""
         self.jobs.cancel_all()
         self.bench = None
         self._pursuit.forget()
         shown = shown_from_view(session.view, self.picture.shown)
-        self._put(Picture(History(session), session, path, shown))
+        self._put(Picture(History(session), session if saved else None, path, shown))
         self.jobs.submit("open", work.open_session, session, title=f"Opening {_name(session, path)}")
 
     def save(self, path: Path) -> None:
@@ -234,9 +234,10 @@ class Desk(QObject):
         self.bench = opened.bench
         frame = min(self.picture.shown.frame, opened.facts.frames - 1)
         session = opened.session.in_folder(self.picture.session.folder)
+        saved = session if self.picture.saved is not None else None
         picture = self.picture.showing(frame=frame)
         notice = Notice(opened.facts.notes[0], grave=False) if opened.facts.notes else None
-        self._put(picture.with_(history=History(session), saved=session, run=opened.facts, notice=notice))
+        self._put(picture.with_(history=History(session), saved=saved, run=opened.facts, notice=notice))
 
     def _failed(self, answer: Answer) -> None:
         if answer.kind == "open" and answer.questions:

@@ -31,6 +31,7 @@ from fieldview.gui.panels.readout import Readout
 from fieldview.gui.panels.regions import Regions
 from fieldview.gui.panels.start import Start
 from fieldview.gui.panels.time_strip import TimeStrip
+from fieldview.gui.recovery import Recovery, lost_sessions
 from fieldview.gui.status_line import StatusLine
 from fieldview.gui.style import style_sheet
 from fieldview.gui.tools import TOOLS
@@ -49,6 +50,9 @@ class MainWindow(QMainWindow):
         self.resize(1280, 720)
         self.setAcceptDrops(True)
         self.desk = Desk(self)
+        self.recovery, self._lost = Recovery(), lost_sessions()
+        self._kept = self._kept_saved = None
+        self._asked = False
         self.theme = theme.of_desktop()
         self.actions_table = Actions(self, all_commands())
         self._build()
@@ -58,6 +62,7 @@ class MainWindow(QMainWindow):
         self.set_theme(self.theme)
         self._restore()
         self._redraw()
+        self._offer_lost()
         self.destroyed.connect(self.desk.jobs.close)
 
     # -- for tests and tools -------------------------------------------------------------------------
@@ -150,6 +155,7 @@ class MainWindow(QMainWindow):
         self.actions_table.draw(picture)
         self.setWindowTitle(title_of(picture))
         self.setWindowModified(picture.unsaved)
+        self._keep_changes(picture)
 
     def set_theme(self, new: theme.Theme) -> None:
         self.theme = new
@@ -187,6 +193,19 @@ class MainWindow(QMainWindow):
             super().keyPressEvent(event)
 
     def closeEvent(self, event):
+        if self.isVisible() and self.desk.picture.unsaved and not self._asked:
+            event.ignore()
+            self._asked = True
+            self.desk.complain(
+                "There are changes that are not saved.",
+                ("Save and close", "window.save_and_close"),
+                ("Close without saving", "window.discard"),
+            )
+            return
+        if self.desk.picture.unsaved:
+            self.recovery.let_go()  # closed all the same: the next start offers the changes
+        else:
+            self.recovery.drop()
         places.remember(
             geometry=bytes(self.saveGeometry().toBase64()).decode(),
             splitters={name: s.sizes() for name, s in self._splitters.items()},
@@ -194,6 +213,49 @@ class MainWindow(QMainWindow):
         self.time_strip.stop()
         self.desk.jobs.close()
         event.accept()
+
+    def save_and_close(self) -> None:
+        """Save, then close once the file is written."""
+        self.desk.after_saving = self.close
+        self.actions_table.run("session.save")
+
+    def discard(self) -> None:
+        """Close and forget the changes."""
+        self.desk.update(saved=self.session)
+        self.close()
+
+    def recover(self) -> None:
+        """Take up what an earlier program left; it counts as not saved."""
+        if self._lost:
+            lost = self._lost.pop(0)
+            self.desk.adopt(lost.session, lost.path, saved=False)
+            self.recovery.keep(lost.session, lost.path)
+            lost.file.unlink(missing_ok=True)
+            self._offer_lost()
+
+    def forget_lost(self) -> None:
+        """Give up what an earlier program left."""
+        if self._lost:
+            self._lost.pop(0).file.unlink(missing_ok=True)
+            self.desk.dismiss()
+            self._offer_lost()
+
+    def _offer_lost(self):
+        if self._lost and self.session is None:
+            self.desk.complain(
+                self._lost[0].sentence, ("Recover", "recovery.take"), ("Discard", "recovery.drop")
+            )
+
+    def _keep_changes(self, picture):
+        """Every edit goes to the recovery file; a saved session needs none."""
+        if picture.history is self._kept and picture.saved is self._kept_saved:
+            return
+        self._kept, self._kept_saved = picture.history, picture.saved
+        self._asked = False
+        if picture.unsaved:
+            self.recovery.keep(picture.session, picture.path)
+        else:
+            self.recovery.drop()
 
     def find_command(self) -> None:
         """Open the command finder."""

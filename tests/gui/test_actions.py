@@ -42,7 +42,7 @@ def test_every_command_is_an_action_and_stands_in_a_menu(window):
         walk(entry.menu())
     for command in all_commands():
         assert window.findChild(QAction, command.id) is not None
-        assert command.id in in_menus
+        assert not command.menu or command.id in in_menus
 
 
 @pytest.mark.parametrize("tool", TOOLS, ids=[t.id for t in TOOLS])
