@@ -144,7 +144,12 @@ def measure_commands() -> tuple[Command, ...]:
     )
     follow = Command("measure.follow", "Follow regions over the run", "Measure", lambda w: w.desk.follow(),
                      enabled=has_frames)  # fmt: skip
-    return (*made, line, follow)
+    sheets = (
+        Command("sheet.uncertainty", "Uncertainty …", "Measure", uncertainty, enabled=has_session,
+                separated=True),
+        Command("sheet.calibration", "Calibration and axes …", "Measure", calibration, enabled=has_session),
+    )  # fmt: skip
+    return (*made, line, follow, *sheets)
 
 
 def output_commands() -> tuple[Command, ...]:
@@ -272,3 +277,15 @@ def _has(picture: Picture, name: str) -> bool:
 
 def play(window) -> None:
     window.time_strip.toggle_playing()
+
+
+def uncertainty(window) -> None:
+    from fieldview.gui.uncertainty_sheet import UncertaintySheet
+
+    UncertaintySheet(window).show()
+
+
+def calibration(window) -> None:
+    from fieldview.gui.calibration_sheet import CalibrationSheet
+
+    CalibrationSheet(window).show()

@@ -24,7 +24,7 @@ def title_of(model: type[steps.Step]) -> str:
 
 
 def add(desk, model: type[steps.Step]) -> None:
-    """A new line with its defaults: axes come first, everything else at the end; its settings open."""
+    """A new line with its defaults, where it belongs in the usual order; its settings open."""
     put(desk, model())
 
 
@@ -33,11 +33,48 @@ def put(desk, step: steps.Step) -> None:
     if session is None:
         return
     ledger = list(session.ledger)
-    place = len(ledger)
-    if isinstance(step, steps.TurnAxes | steps.Calibrate):
-        place = sum(isinstance(s, steps.Calibrate) for s in ledger)
+    place = _place_for(step, ledger)
     ledger.insert(place, step)
     _commit(desk, f"Add {title_of(type(step)).lower()}", ledger, line=place)
+
+
+def by_hand(desk, *, reject=(), keep=()) -> None:
+    """Reject or keep single vectors: in the ledger's line for that, or in a new one before any filling."""
+    session = desk.picture.session
+    ledger = list(session.ledger)
+    place = next((i for i, s in enumerate(ledger) if isinstance(s, steps.HandEdit)), None)
+    if place is None:
+        step = steps.HandEdit()
+        place = _place_for(step, ledger)
+        ledger.insert(place, step)
+    step = ledger[place]
+    ledger[place] = step.model_copy(
+        update={
+            "reject": tuple(sorted((set(step.reject) - set(keep)) | set(reject))),
+            "keep": tuple(sorted((set(step.keep) - set(reject)) | set(keep))),
+        }
+    )
+    count = len(reject) + len(keep)
+    verb = "Reject" if reject else "Keep"
+    _commit(desk, f"{verb} {count} vector{'s' if count > 1 else ''}", ledger)
+
+
+def _place_for(step: steps.Step, ledger) -> int:
+    """Where a new line belongs: axes, frame and masks, tests, edits by hand, filling, smoothing."""
+    order = _ORDER.get(type(step), 3)
+    later = (i for i, s in enumerate(ledger) if _ORDER.get(type(s), 3) > order)
+    return next(later, len(ledger))
+
+
+_ORDER: dict[type, int] = {
+    steps.Calibrate: 0,
+    steps.TurnAxes: 1,
+    steps.MovingFrame: 2,
+    steps.Mask: 2,
+    steps.HandEdit: 4,
+    steps.Fill: 5,
+    steps.Smooth: 6,
+}
 
 
 def switch(desk, line: int, on: bool) -> None:

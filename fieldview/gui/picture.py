@@ -51,6 +51,7 @@ class Shown:
     levels: Mapping[str, tuple[float, float]] = attribute(default_factory=lambda: NOTHING)
     speed: float | None = None
     coverage: float = 1.0
+    drawer: str = "growth"
 
 
 @dataclass(frozen=True, eq=False)
@@ -117,6 +118,24 @@ class IsoLines:
 
 
 @dataclass(frozen=True, eq=False)
+class Curve:
+    """Two quantities along one axis, for the drawer: of which page, field and region.
+
+    ``x`` is arc length or scale; ``first`` and ``second`` tangential and normal component, or Γ and Φ;
+    ``u_first`` and ``u_second`` their standard uncertainties, or None.
+    """
+
+    page: str
+    of: Field
+    region: Region
+    x: np.ndarray
+    first: np.ndarray
+    second: np.ndarray
+    u_first: np.ndarray | None = None
+    u_second: np.ndarray | None = None
+
+
+@dataclass(frozen=True, eq=False)
 class Measured:
     """The numbers of one region: as the command line prints them, and where they came from."""
 
@@ -156,6 +175,7 @@ class Picture:
     measured: Mapping[str, Measured] = attribute(default_factory=lambda: NOTHING)
     shares: Mapping[int, float] = attribute(default_factory=lambda: NOTHING)
     traces: Mapping[str, Any] = attribute(default_factory=lambda: NOTHING)
+    curve: Curve | None = None
     draft: Region | None = None
     draft_of: str | None = None
     draft_measured: Measured | None = None
@@ -202,6 +222,13 @@ class Picture:
         """The arrows' colour quantity, where it is of the field that is shown."""
         right = self.tint is not None and self.tint.of is self.field
         return self.tint if right and self.tint.name == self.shown.arrow_colour else None
+
+    @property
+    def curve_now(self) -> Curve | None:
+        """The drawer's curve, where it is of this page, field and region."""
+        curve, region = self.curve, self.selected
+        right = curve is not None and curve.page == self.shown.drawer and curve.of is self.field
+        return curve if right and curve.region == region else None
 
     @property
     def iso_now(self) -> IsoLines | None:

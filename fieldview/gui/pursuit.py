@@ -32,6 +32,7 @@ class Pursuit:
             self._numbers(picture)
             self._map(picture)
             self._iso(picture)
+            self._curve(picture)
             self._cards(picture)
 
     def _changed(self, kind: str, key: object) -> bool:
@@ -89,6 +90,19 @@ class Pursuit:
             self._desk.jobs.cancel("iso")
             return
         self._desk.jobs.submit("iso", _iso_of, picture.field, name, levels, lane="derive", title="Iso-lines")
+
+    def _curve(self, picture: Picture) -> None:
+        page, region = picture.shown.drawer, picture.selected
+        closed = region is not None and region.shape != "line"
+        fits = {"around": closed, "growth": closed, "profile": region is not None and not closed}
+        session = picture.session
+        if not self._changed("curve", (picture.field, page, region, session.line)):
+            return
+        if not fits.get(page, False):
+            self._desk.jobs.cancel("curve")
+            return
+        given = (session, picture.field, page, region)
+        self._desk.jobs.submit("curve", work.curve_of, *given, lane="derive", title="Drawing the curve")
 
     def _cards(self, picture: Picture) -> None:
         field, shown = picture.field, picture.shown
@@ -148,6 +162,9 @@ class Pursuit:
 
     def _got_iso(self, got) -> None:
         self._desk.update(iso=got)
+
+    def _got_curve(self, got) -> None:
+        self._desk.update(curve=got)
 
     def _got_cards(self, got) -> None:
         if isinstance(got, MapOf):

@@ -36,6 +36,10 @@ ENTRIES = (
 )
 
 
+TRACE_SYMBOLS = {"line": ("∫u·dl", "m²/s")}
+"""What is followed over time where it is not Γ."""
+
+
 @dataclass(frozen=True)
 class Figure:
     """A number taken from a row: value, unit, uncertainty; None where the row has null."""

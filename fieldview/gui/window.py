@@ -25,6 +25,7 @@ from fieldview.gui.commands import all_commands
 from fieldview.gui.desk import Desk
 from fieldview.gui.icons import icon, icon_folder
 from fieldview.gui.panels.banner import Banner
+from fieldview.gui.panels.drawer import Drawer
 from fieldview.gui.panels.ledger import Ledger
 from fieldview.gui.panels.quantities import Quantities
 from fieldview.gui.panels.readout import Readout
@@ -92,7 +93,16 @@ class MainWindow(QMainWindow):
         self.showing = Showing(self.canvas)
         self.ledger, self.quantities = Ledger(self.desk), Quantities(self.desk)
         self.readout, self.regions = Readout(self.desk), Regions(self.desk)
-        self.time_strip = TimeStrip(self.desk)
+        self.time_strip, self.drawer = TimeStrip(self.desk), Drawer(self.desk)
+        self._splitters: dict[str, QSplitter] = {}
+        self._panels = (
+            self.ledger,
+            self.quantities,
+            self.readout,
+            self.regions,
+            self.time_strip,
+            self.drawer,
+        )
         self.canvas.play_tapped.connect(self.time_strip.toggle_playing)
         self.tool_bar = self._tool_bar()
         self._pages = QStackedWidget()
@@ -134,11 +144,14 @@ class MainWindow(QMainWindow):
         top.setSizes([236, 790, 252])
         whole = _splitter(Qt.Orientation.Vertical, (top, self._lower()), (1, 0))
         whole.setSizes([490, 160])
-        self._splitters = {"right": right, "top": top, "whole": whole}
+        self._splitters |= {"right": right, "top": top, "whole": whole}
         return whole
 
     def _lower(self) -> QWidget:
-        return self.regions
+        lower = _splitter(Qt.Orientation.Horizontal, (self.regions, self.drawer), (1, 0))
+        lower.setSizes([900, 380])
+        self._splitters["lower"] = lower
+        return lower
 
     # -- the one way back: a picture is drawn --------------------------------------------------------
 
@@ -147,7 +160,7 @@ class MainWindow(QMainWindow):
         self._pages.setCurrentIndex(0 if picture.session is None else 1)
         self.canvas.tool = self.tools[picture.shown.tool]
         self.showing.draw(picture)
-        for panel in (self.ledger, self.quantities, self.readout, self.regions, self.time_strip):
+        for panel in self._panels:
             panel.draw(picture)
         self.status.draw(picture)
         self.status.hint.setText(self.canvas.tool.hint if picture.session is not None else "")
@@ -163,7 +176,7 @@ class MainWindow(QMainWindow):
         self.setStyleSheet(style_sheet(new, (icon_folder() / "chevron.svg").as_posix()))
         self.setWindowIcon(icon("loopflux", new))
         self.actions_table.dress(lambda name: icon(name, new))
-        for panel in (self.ledger, self.quantities, self.readout, self.regions, self.time_strip):
+        for panel in self._panels:
             panel.set_theme(new)
         self.showing.set_theme(new)
         self._redraw()

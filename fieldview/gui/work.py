@@ -14,10 +14,11 @@ import numpy as np
 from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field, Status
 from fieldview.gui.jobs import Progress
-from fieldview.gui.picture import Card, IsoLines, MapOf, Measured, RunFacts
+from fieldview.gui.picture import Card, Curve, IsoLines, MapOf, Measured, RunFacts
 from fieldview.session.models import RunSource, Session
 
 THUMBNAIL = (96, 48)
+GROWTH_FACTORS = np.linspace(0.1, 2.0, 39)
 CACHE_BYTES = 400_000_000
 """How much of the replay the window keeps: some dozens of frames of a million nodes."""
 
@@ -299,3 +300,35 @@ def _thumbnail(values: np.ndarray) -> np.ndarray:
     rows = max(1, -(-values.shape[0] // THUMBNAIL[1]))
     columns = max(1, -(-values.shape[1] // THUMBNAIL[0]))
     return np.array(values[::rows, ::columns])
+
+
+def curve_of(session: Session, field: Field, page: str, region) -> Curve | None:
+    """The drawer's curve for a region: along its contour or line, or as it grows about its centroid."""
+    from fieldview.compute.growth import around, growth_curve
+
+    shape = region.outline()
+    if shape.problem() is not None:
+        return None
+    if page == "growth":
+        grown = growth_curve(field, shape, GROWTH_FACTORS, line=session.line)
+        return Curve(
+            page,
+            field,
+            region,
+            GROWTH_FACTORS,
+            _values(grown.circulation),
+            _values(grown.flux),
+            _spreads(grown.circulation),
+            _spreads(grown.flux),
+        )
+    along = around(field, shape)
+    return Curve(page, field, region, along.arc_length, along.tangential, along.normal)
+
+
+def _values(numbers) -> np.ndarray:
+    return np.array([np.nan if n.value is None else n.value for n in numbers])
+
+
+def _spreads(numbers) -> np.ndarray | None:
+    found = np.array([np.nan if n.combined is None else n.combined for n in numbers])
+    return found if np.isfinite(found).any() else None

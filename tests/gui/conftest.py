@@ -66,7 +66,7 @@ def session_file(run_folder):
         units="m, s",
         run=RunSource(files=("run/f*.csv",)),
         error_model=Uncertainties(sigma=0.002, correlation_nodes=1.0),
-        ledger=(MedianTest(floor=0.002), Fill()),
+        ledger=(MedianTest(floor=0.01), Fill()),
         regions=(Circle(name="core", centre=(0.04, 0.03), radius=0.015),),
     )
     path = run_folder.parent / "vortex.session.json"

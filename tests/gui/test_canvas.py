@@ -150,12 +150,16 @@ def test_a_single_row_of_nodes_can_be_drawn(open_window, tmp_path):
     assert not window.grab().isNull()
 
 
-def test_legend_names_the_marks_that_occur(window):
+def test_legend_names_the_marks_that_occur(window, qtbot):
+    from fieldview.gui import ledger_edits
+    from tests.gui.conftest import settle
+
     marks = dict(window.canvas.legend._key.marks)
     assert set(marks) == {"measured", "filled"}
-    window.desk.show(as_of=1)
-    field = window.desk.picture.field
-    assert field.count(Status.FILLED) > 0
+    ledger_edits.as_of(window.desk, 0)
+    settle(qtbot, window)
+    assert set(dict(window.canvas.legend._key.marks)) == {"measured", "rejected", "missing"}
+    assert window.desk.picture.field.count(Status.FILLED) == 0
 
 
 def test_colour_range_and_arrow_length_are_locked_across_frames(window, qtbot):

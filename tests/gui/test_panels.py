@@ -54,11 +54,11 @@ def test_settings_open_in_place_and_edit_the_step(window, qtbot):
 def test_steps_are_added_moved_and_removed(window, qtbot):
     menu = window.ledger.add.menu()
     next(a for a in menu.actions() if a.text() == "Spread test").trigger()
-    assert [type(s) for s in window.session.ledger] == [MedianTest, Fill, SpreadTest]
-    line = window.ledger.lines[2]
-    QTest.keyClick(line, Qt.Key.Key_Up, Qt.KeyboardModifier.AltModifier)
     assert [type(s) for s in window.session.ledger] == [MedianTest, SpreadTest, Fill]
-    QTest.keyClick(window.ledger.lines[1], Qt.Key.Key_Delete)
+    line = window.ledger.lines[1]
+    QTest.keyClick(line, Qt.Key.Key_Up, Qt.KeyboardModifier.AltModifier)
+    assert [type(s) for s in window.session.ledger] == [SpreadTest, MedianTest, Fill]
+    QTest.keyClick(window.ledger.lines[0], Qt.Key.Key_Delete)
     assert [type(s) for s in window.session.ledger] == [MedianTest, Fill]
     settle(qtbot, window)
 
@@ -165,7 +165,7 @@ def test_a_tap_on_space_plays(window, qtbot):
 
 
 def test_regions_are_followed_over_the_run(window, qtbot):
-    from fieldview.gui.panels.time_strip import trace_of
+    from fieldview.gui.panels.traces import trace_of
     from fieldview.session.measure import measure
 
     QTest.mouseClick(window.time_strip.follow, Qt.MouseButton.LeftButton)

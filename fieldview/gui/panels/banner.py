@@ -23,7 +23,8 @@ class Banner(QFrame):
         row = QHBoxLayout(self)
         row.setContentsMargins(12, 8, 8, 8)
         row.setSpacing(8)
-        self.text = label("", wrap=True)
+        self.text = label("")
+        self.text.setWordWrap(True)
         self.text.setObjectName("banner_text")
         self.text.setTextInteractionFlags(Qt.TextInteractionFlag.TextSelectableByMouse)
         row.addWidget(self.text, 1)
@@ -64,8 +65,6 @@ class Banner(QFrame):
 
     def _place(self):
         width = min(self.parent().width() - 2 * self.MARGIN, 760)
-        self.setFixedWidth(max(width, 200))
-        self.adjustSize()
-        height = self.layout().heightForWidth(self.width()) if self.layout().hasHeightForWidth() else -1
-        self.resize(self.width(), max(height, self.sizeHint().height()))
+        width = max(width, 200)
+        self.resize(width, self.layout().totalHeightForWidth(width))
         self.move((self.parent().width() - self.width()) // 2, self.MARGIN)

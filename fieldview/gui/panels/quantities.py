@@ -55,7 +55,12 @@ class CardModel(QAbstractListModel):
             case Qt.ItemDataRole.AccessibleTextRole:
                 return f"{card.title}, {range_text(card)} {wording.unit_text(card.unit)}, {times_text(card)}"
             case Qt.ItemDataRole.ToolTipRole:
-                return f"{card.title} {wording.with_unit(card.symbol, card.unit)}\n{times_text(card)}"
+                lines = (
+                    f"{card.title} {wording.with_unit(card.symbol, card.unit)}",
+                    times_text(card),
+                    card.reason,
+                )
+                return "\n".join(line for line in lines if line)
         return card if role == CARD else None
 
 
@@ -237,7 +242,7 @@ def range_text(card: Card) -> str:
 def times_text(card: Card) -> str:
     if card.times_u is not None:
         return f"{wording.short(card.times_u, digits=2)} × its U"
-    return card.reason or "U unknown"
+    return "U unknown"
 
 
 def thumbnail_image(card: Card, theme: Theme) -> QImage:

@@ -20,13 +20,12 @@ from PySide6.QtWidgets import (
 from fieldview.gui import theme as themes
 from fieldview.gui.icons import icon
 from fieldview.gui.panels.base import label
+from fieldview.gui.panels.traces import trace_of
 from fieldview.gui.picture import Picture
-from fieldview.gui.region_text import figure
 from fieldview.gui.theme import LIGHT, Theme
 
 SOURCES = (("frame", "frame"), ("mean", "mean"), ("fluctuation", "fluct."))
 RATES = (1, 2, 5, 10, 20, 50)
-TRACE_KEYS = (("circulation",), ("line_integral",), ("through_flow",))
 
 
 class TimeStrip(QWidget):
@@ -271,16 +270,3 @@ class Ruler(QWidget):
     def focusOutEvent(self, event):
         super().focusOutEvent(event)
         self.update()
-
-
-def trace_of(picture: Picture, name: str) -> list[tuple[int, float, float | None]]:
-    """Γ (or what a region has instead) of the frames measured so far: (frame, value, combined U)."""
-    points = []
-    for frame in sorted(picture.traces):
-        row = picture.traces[frame].get(name)
-        if row is None:
-            continue
-        found = next((f for key in TRACE_KEYS if (f := figure(row, key)) is not None), None)
-        if found is not None and found.value is not None:
-            points.append((frame, found.value, found.uncertainty))
-    return points

@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 from fieldview.gui.tools.base import Tool
 from fieldview.gui.tools.drawing import CircleTool, Corners, EllipseTool, Freehand, LineTool, RectangleTool
+from fieldview.gui.tools.editing import Keep, MaskTool, Reject
 from fieldview.gui.tools.move import Move, Probe
 
 __all__ = ["TOOLS", "Listed"]
@@ -30,4 +31,7 @@ TOOLS = (
     Listed("ellipse", "Ellipse", "E", EllipseTool),
     Listed("line", "Line", "L", LineTool),
     Listed("freehand", "Freehand", "H", Freehand),
+    Listed("reject", "Reject", "X", Reject),
+    Listed("keep", "Keep", "K", Keep),
+    Listed("mask", "Mask", "M", MaskTool),
 )

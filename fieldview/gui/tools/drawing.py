@@ -79,6 +79,9 @@ class Drawing(Tool):
             self.desk.complain(f"{problem[:1].upper()}{problem[1:]}.")
             return
         self._points, self._tip = [], None
+        self._put(region)
+
+    def _put(self, region) -> None:
         self.desk.add_region(region)
 
 

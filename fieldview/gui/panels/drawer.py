@@ -1,0 +1,172 @@
+"""The drawer: the chosen region around its contour, as it grows, over time, along a line, and its budget."""
+
+from __future__ import annotations
+
+import numpy as np
+from PySide6.QtCore import Qt
+from PySide6.QtWidgets import QStackedWidget, QTabBar, QVBoxLayout, QWidget
+
+from fieldview.gui import theme as themes
+from fieldview.gui import wording
+from fieldview.gui.panels.base import label
+from fieldview.gui.panels.budget import Budget
+from fieldview.gui.panels.plots import Plot
+from fieldview.gui.panels.traces import trace_of
+from fieldview.gui.picture import Picture
+from fieldview.gui.region_text import TRACE_SYMBOLS
+from fieldview.gui.theme import LIGHT, Theme
+
+TABS = (
+    ("around", "Around"),
+    ("growth", "Growth"),
+    ("over_time", "Over time"),
+    ("profile", "Profile"),
+    ("budget", "Budget"),
+)
+
+
+class Drawer(QWidget):
+    """Shows one of its pages; what a page needs is computed only while it is the one shown."""
+
+    def __init__(self, desk, parent=None):
+        super().__init__(parent)
+        self.desk = desk
+        self.theme: Theme = LIGHT
+        self.setObjectName("drawer")
+        self.setAccessibleName("Drawer of the chosen region")
+        self.setProperty("role", "paper")
+        self.setAttribute(Qt.WidgetAttribute.WA_StyledBackground)
+        column = QVBoxLayout(self)
+        column.setContentsMargins(8, 4, 8, 4)
+        column.setSpacing(2)
+        self.tabs = QTabBar()
+        self.tabs.setDrawBase(False)
+        self.tabs.setExpanding(False)
+        self.tabs.setAccessibleName("What the drawer shows")
+        for _, title in TABS:
+            self.tabs.addTab(title)
+        self.tabs.tabBarClicked.connect(lambda place: desk.show(drawer=TABS[place][0]))
+        self.tabs.currentChanged.connect(lambda place: desk.show(drawer=TABS[place][0]))
+        column.addWidget(self.tabs)
+        self.pages = QStackedWidget()
+        self.plots = {name: Plot(f"plot_{name}") for name, _ in TABS if name != "budget"}
+        self.budget = Budget()
+        for name, _ in TABS:
+            self.pages.addWidget(self.plots.get(name, self.budget))
+        column.addWidget(self.pages, 1)
+        self.said = label("", "muted", wrap=True)
+        column.addWidget(self.said)
+        self._seen: tuple | None = None
+
+    def set_theme(self, theme: Theme) -> None:
+        self.theme = self.budget.theme = theme
+        for plot in self.plots.values():
+            plot.set_theme(theme)
+        self._seen = None
+
+    def draw(self, picture: Picture) -> None:
+        place = next(i for i, (name, _) in enumerate(TABS) if name == picture.shown.drawer)
+        if self.tabs.currentIndex() != place:
+            self.tabs.setCurrentIndex(place)
+        self.pages.setCurrentIndex(place)
+        name, region = picture.shown.drawer, picture.selected
+        curve = picture.curve_now
+        seen = (name, region, curve, picture.traces, picture.shown.coverage, picture.shown.frame, self.theme)
+        if name == "budget":
+            self.budget.draw(picture)
+            self.said.setText("")
+        elif self._seen is None or any(a is not b for a, b in zip(seen, self._seen, strict=True)):
+            self._seen = seen
+            self.said.setText(_DRAW[name](self.plots[name], picture, self._colour(picture)))
+
+    def _colour(self, picture: Picture) -> str:
+        for place, region in enumerate(picture.regions):
+            if region.name == picture.shown.selected:
+                return themes.region_colour(region.colour, place)
+        return themes.region_colour(None, 0)
+
+
+def _draw_around(plot: Plot, picture: Picture, colour: str) -> str:
+    """Tangential and normal component against arc length of a contour."""
+    region, curve = picture.selected, picture.curve_now
+    _along_axes(plot, picture)
+    if region is None:
+        return "Choose a region."
+    if region.shape == "line":
+        return "A line's components are under Profile."
+    return _draw_components(plot, picture, curve, colour, ("tangential", "normal, outward"))
+
+
+def _draw_profile(plot: Plot, picture: Picture, colour: str) -> str:
+    """The components along a line."""
+    region, curve = picture.selected, picture.curve_now
+    _along_axes(plot, picture)
+    if region is None or region.shape != "line":
+        return "Choose a line, or draw one (L)."
+    return _draw_components(plot, picture, curve, colour, ("along the line", "across, to the right"))
+
+
+def _along_axes(plot: Plot, picture: Picture) -> None:
+    units = picture.field.units if picture.field is not None else None
+    length, speed = (units.length, wording.unit_text(units.velocity)) if units else ("m", "m/s")
+    plot.start(f"arc length [{length}]", f"velocity [{speed}]")
+
+
+def _draw_components(plot: Plot, picture: Picture, curve, colour: str, words) -> str:
+    if curve is None:
+        return "working …"
+    k = picture.shown.coverage
+    spread = [None if u is None else k * np.asarray(u) for u in (curve.u_first, curve.u_second)]
+    plot.add_line(curve.x, curve.first, colour, spread=spread[0])
+    plot.add_line(curve.x, curve.second, plot.theme.muted, spread=spread[1], dash=(4, 3))
+    return f"solid: {words[0]} · dashed: {words[1]}"
+
+
+def _draw_growth(plot: Plot, picture: Picture, colour: str) -> str:
+    """Γ and Φ as the contour is scaled about its centroid."""
+    region, curve = picture.selected, picture.curve_now
+    unit = wording.unit_text(picture.field.units.circulation) if picture.field is not None else "m²/s"
+    plot.start("scale of the contour", f"Γ, Φ [{unit}]")
+    if region is None:
+        return "Choose a region."
+    if region.shape == "line":
+        return "A line encloses nothing that could grow."
+    if curve is None:
+        return "working …"
+    k = picture.shown.coverage
+    spread = [None if u is None else k * np.asarray(u) for u in (curve.u_first, curve.u_second)]
+    plot.add_line(curve.x, curve.first, colour, spread=spread[0])
+    plot.add_line(curve.x, curve.second, plot.theme.muted, spread=spread[1], dash=(4, 3))
+    plot.add_mark(1.0, "drawn")
+    return "solid: Γ · dashed: Φ · a plateau of Γ means that the vortex is inside"
+
+
+def _draw_over_time(plot: Plot, picture: Picture, colour: str) -> str:
+    """The chosen region's number on every frame measured so far."""
+    region = picture.selected
+    known = picture.run is not None and any(t is not None for t in picture.run.times)
+    symbol, unit = TRACE_SYMBOLS.get(region.shape if region else "", ("Γ", "m²/s"))
+    if picture.field is not None:
+        unit = wording.unit_text(picture.field.units.circulation)
+    plot.start("time [s]" if known else "frame", f"{symbol} [{unit}]")
+    if region is None:
+        return "Choose a region."
+    points = trace_of(picture, region.name)
+    if not points:
+        return "Press Follow over run to measure every frame."
+    frames = [frame for frame, _, _ in points]
+    x = [picture.run.times[f] for f in frames] if known else [f + 1 for f in frames]
+    k = picture.shown.coverage
+    spread = np.array([np.nan if u is None else k * u for _, _, u in points])
+    plot.add_line(x, [value for _, value, _ in points], colour, spread=spread)
+    if picture.shown.frame in frames:
+        plot.add_mark(x[frames.index(picture.shown.frame)], "shown")
+    return f"{len(points)} of {picture.run.frames} frames"
+
+
+_DRAW = {
+    "around": _draw_around,
+    "growth": _draw_growth,
+    "over_time": _draw_over_time,
+    "profile": _draw_profile,
+}
