@@ -72,6 +72,12 @@ def derivative(
     values = np.asarray(values, float)
     line = Line(grid, along)
     slope = line.first_choice(values, rule)
+    if not rule.across:
+        edges = line.settle_edges(values, slope, rule)
+        # a NaN anywhere would make the sum of squares NaN: without one there are no gaps to look after
+        if np.isfinite(np.dot(slope.ravel(), slope.ravel())):
+            return slope, edges
+        slope.ravel()[edges] = np.nan
     absent = np.isnan(slope)
     invalid = np.isnan(values)
     slope[invalid] = np.nan

@@ -50,9 +50,10 @@ class Local:
         return self._slope("vy")
 
     def combined(self, first: str, sign: int, second: str) -> np.ndarray:
-        """Sum or difference of two derivatives, a fresh array."""
-        a, b = self._slope(first), self._slope(second)
-        return a - b if sign < 0 else a + b
+        """Sum or difference of two derivatives, a fresh array; the derivatives themselves are not kept."""
+        a, b = self._slope(first, keep=False), self._slope(second, keep=False)
+        target = None if any(a is kept for kept in self._along_lattice.values()) else a
+        return np.subtract(a, b, out=target) if sign < 0 else np.add(a, b, out=target)
 
     @property
     def fallback_count(self) -> int:
@@ -81,10 +82,10 @@ class Local:
         # a quarter turn must not leave round-off where nothing of the other axis belongs
         return np.where(np.abs(turned) < 1e-15, 0.0, turned)
 
-    def _slope(self, name: str) -> np.ndarray:
+    def _slope(self, name: str, *, keep: bool = True) -> np.ndarray:
         component, axis = DERIVATIVES[name]
         parts = [
-            (factor, self._lattice_slope(component, along))
+            (factor, self._lattice_slope(component, along, keep))
             for factor, along in zip(self.axes[axis], ("x", "y"), strict=True)
             if factor != 0
         ]
@@ -92,15 +93,17 @@ class Local:
             return parts[0][1]
         return sum(factor * slope for factor, slope in parts)
 
-    def _lattice_slope(self, component: str, along: str) -> np.ndarray:
+    def _lattice_slope(self, component: str, along: str, keep: bool) -> np.ndarray:
         key = (component, along)
-        if key not in self._along_lattice:
-            self._check_plane()
-            values = getattr(self.field, component)
-            slope, fallback = derivative(values, self.field.grid, along, scheme=self.scheme)
+        if key in self._along_lattice:
+            return self._along_lattice[key]
+        self._check_plane()
+        values = getattr(self.field, component)
+        slope, fallback = derivative(values, self.field.grid, along, scheme=self.scheme)
+        self._fallback = np.concatenate([self._fallback, fallback])
+        if keep:
             self._along_lattice[key] = slope
-            self._fallback = np.concatenate([self._fallback, fallback])
-        return self._along_lattice[key]
+        return slope
 
     def _check_plane(self) -> None:
         if not self.field.grid.is_plane:

@@ -13,7 +13,7 @@ from fieldview.compute.stencil_covariance import coefficient
 
 
 def changed_nodes(maps: Sequence[LinearMap], shape: tuple[int, int]) -> np.ndarray:
-    """Nodes, bool (ny, nx), whose value is not the measured one any more; a mean taken off counts for none."""
+    """Nodes, bool (ny, nx), whose value is not the measured one any more; a mean taken off does not count."""
     changed = np.zeros(shape[0] * shape[1], bool)
     for change in maps:
         if isinstance(change, SparseMap):

@@ -71,7 +71,7 @@ def _differences(grid: Grid, there: np.ndarray, axis: int, count: int) -> sp.csr
 
     Along axis 0 (y) or 1 (x), from the interpolating polynomial: (count - 1)! times the divided difference.
     """
-    ny, nx = there.shape
+    nx = there.shape[1]
     half = count // 2
     positions = grid.y if axis == 0 else grid.x
     size, stride = positions.size, nx if axis == 0 else 1
@@ -166,7 +166,8 @@ def _large_solution(among: sp.csr_array, known: sp.csr_array, members: np.ndarra
     columns = np.flatnonzero(np.diff(sides.indptr))
     if columns.size * members.size > _MOST_WEIGHTS:
         raise InputError(
-            f"a gap of {members.size} nodes is too large for this way of filling; give max_gap to leave it open"
+            f"a gap of {members.size} nodes is too large for this way of filling; "
+            "give max_gap to leave it open"
         )
     block = sp.csc_array(among[members][:, members])
     solved = splu(block).solve(sides[:, columns].toarray())

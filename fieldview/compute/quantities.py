@@ -186,7 +186,7 @@ def _shear_strain(at: Local):
 
 
 def _normal_strain(at: Local):
-    """Half the difference of the diagonal, (du/dx - dv/dy)/2: the shear strain of axes turned by 45 deg. [1/time]"""
+    """Half the difference of the diagonal, (du/dx - dv/dy)/2: shear strain in axes turned 45 deg. [1/time]"""
     return 0.5 * at.combined("ux", -1, "vy"), lambda: {"ux": 0.5, "vy": -0.5}
 
 

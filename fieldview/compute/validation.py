@@ -12,7 +12,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from fieldview.compute.errors import InputError
-from fieldview.compute.medians import MAD_TO_SIGMA, column_median, neighbour_residual
+from fieldview.compute.medians import MAD_TO_SIGMA, column_median
+from fieldview.compute.neighbourhoods import neighbour_residual
 
 FEWEST_NEIGHBOURS = 3
 """A vector with fewer neighbours than this is not judged by the median test."""
@@ -124,22 +125,20 @@ def median_test(
         raise InputError(f"threshold is {threshold}; give a positive number (2 is usual)")
     if radius < 1 or passes < 1:
         raise InputError(f"radius is {radius} and passes is {passes}; give whole numbers from 1 on")
-    judged_from = np.logical_and.reduce([np.isfinite(part) for part in parts.values()])
-    rejected = np.zeros(shape, bool)
-    residual = np.full(shape, np.nan)
-    not_judged = np.zeros(shape, bool)
+    usable = np.isfinite(next(iter(parts.values())))
+    for part in list(parts.values())[1:]:
+        usable &= np.isfinite(part)
+    rejected, residual = np.zeros(shape, bool), np.full(shape, np.nan)
     for _ in range(passes):
-        usable = judged_from & ~rejected
         latest, neighbours = neighbour_residual(list(parts.values()), usable, radius, list(floors.values()))
-        few = usable & (neighbours < FEWEST_NEIGHBOURS)
-        judged = usable & ~few
-        np.copyto(residual, latest, where=judged)
-        residual[few] = np.nan
-        not_judged = few
-        worse = judged & (latest > threshold)
+        not_judged = usable & (neighbours < FEWEST_NEIGHBOURS)
+        np.copyto(residual, latest, where=usable)
+        residual[not_judged] = np.nan
+        worse = usable & (residual > threshold)
         if not worse.any():
             break
         rejected |= worse
+        usable &= ~worse
     return Verdict(rejected, residual, not_judged)
 
 
