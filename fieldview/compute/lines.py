@@ -50,8 +50,6 @@ class Line:
                     sides = [self._at(values, place + k) for k in choice.offsets]
                     terms = [w * side for w, side in zip(weights, sides, strict=True)]
                     self._at(slope, place)[...] = sum(terms)
-                        w * side for w, side in zip(weights, sides, strict=True)
-                    )
                     break
         starts = np.arange(self.ny) * self.nx if self.is_x else np.arange(self.nx)
         return (np.array(ends, np.intp)[:, None] * self.stride + starts).ravel()

@@ -9,6 +9,8 @@ node becomes the mean of its four neighbours (on even spacing).
 
 from __future__ import annotations
 
+from functools import lru_cache
+
 import numpy as np
 import scipy.sparse as sp
 
@@ -16,6 +18,9 @@ from fieldview.compute.grid import Grid
 
 _STRETCH = 1e-5
 """Share by which the lattice is drawn out and sheared to choose among equally good triangles."""
+
+_LARGEST_KEPT = 100
+"""Nodes of a gap's bounding box up to which its weights are kept for the next gap of the same shape."""
 
 _TOLERANCE = 1e-9
 """How far outside a triangle, in its own coordinates, a node may lie and still belong to it."""
@@ -31,28 +36,36 @@ def linear_weights(grid: Grid, valid: np.ndarray, label: np.ndarray) -> sp.csr_a
     label : int ndarray (ny, nx)
         Number of the gap at each of its nodes, 0 outside.
     """
-    ny, nx = valid.shape
+    nx = valid.shape[1]
     pieces = _Pieces(valid.size)
-    known: dict[bytes, tuple] = {}
+    spacing = grid.spacing if all(grid.is_uniform) else None
     for box, number in _boxes(label):
         gap = label[box] == number
         ring = _ring(gap) & valid[box]
-        iy, ix = np.nonzero(gap)
-        jy, jx = np.nonzero(ring)
-        shape_key = None
-        if all(grid.is_uniform):
-            shape_key = (
-                bytes([gap.shape[1] % 251]) + gap.tobytes() + ring.tobytes() + repr(gap.shape).encode()
-            )
-        if shape_key not in known:
-            x, y = grid.x[box[1]], grid.y[box[0]]
-            found = _interpolation(x[jx] + 1j * y[jy], x[ix] + 1j * y[iy])
-            if shape_key is None:
-                pieces.add(box, nx, (iy, ix), (jy, jx), found)
-                continue
-            known[shape_key] = found
-        pieces.add(box, nx, (iy, ix), (jy, jx), known[shape_key])
+        if spacing is not None and gap.size <= _LARGEST_KEPT:
+            found = _of_shape(gap.tobytes(), ring.tobytes(), gap.shape, spacing)
+        else:
+            found = _across(gap, ring, grid.x[box[1]], grid.y[box[0]])
+        pieces.add(box, nx, np.nonzero(gap), np.nonzero(ring), found)
     return pieces.matrix()
+
+
+@lru_cache(maxsize=20_000)
+def _of_shape(gap: bytes, ring: bytes, shape: tuple[int, int], spacing: tuple[float, float]):
+    """Weights of a gap of this shape on an evenly spaced lattice, wherever it lies."""
+    marks = [np.frombuffer(part, bool).reshape(shape) for part in (gap, ring)]
+    # an axis of one node has no spacing
+    x, y = (
+        np.arange(count) * (step if count > 1 else 1.0)
+        for count, step in zip(shape[::-1], spacing, strict=True)
+    )
+    return _across(*marks, x, y)
+
+
+def _across(gap: np.ndarray, ring: np.ndarray, x: np.ndarray, y: np.ndarray):
+    """(target, site, weight) for the nodes of a gap and of its ring, each numbered row by row."""
+    nodes = x[None, :] + 1j * y[:, None]
+    return _interpolation(nodes[ring], nodes[gap])
 
 
 class _Pieces:
