@@ -16,6 +16,13 @@ def run_commands() -> tuple[Command, ...]:
         Command("session.open", "&Open …", "Run", dialogs.open_files, "Ctrl+O", "open"),
         Command("session.open_folder", "Open &folder …", "Run", dialogs.open_folder),
         Command("session.sample", "Try a sample", "Run", dialogs.open_sample),
+        Command(
+            "sheet.reading",
+            "How the files are read …",
+            "Run",
+            lambda w: w.ask_reading(),
+            enabled=lambda p: p.session is not None or p.notice is not None,
+        ),
         Command("session.save", "&Save", "Run", save, "Ctrl+S", "save", has_session, separated=True),
         Command("session.save_as", "Save &as …", "Run", dialogs.save_as, "Ctrl+Shift+S", enabled=has_session),
         Command("window.save_and_close", "Save and close", "", lambda w: w.save_and_close()),

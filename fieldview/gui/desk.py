@@ -22,6 +22,7 @@ from fieldview.session.undo import History
 
 class Desk(QObject):
     redrawn = Signal()
+    questioned = Signal()
 
     def __init__(self, parent: QObject | None = None):
         super().__init__(parent)
@@ -31,7 +32,7 @@ class Desk(QObject):
         self.jobs.answered.connect(self._answered)
         self.jobs.changed.connect(self._tasks_changed)
         self._pursuit = Pursuit(self)
-        self._opening: Path | None = None
+        self.opening: tuple[Session, Path | None] | None = None
         self.after_saving: Callable[[], None] | None = None
 
     # -- opening and saving --------------------------------------------------------------------------
@@ -57,6 +58,7 @@ class Desk(QObject):
         self.bench = None
         self._pursuit.forget()
         shown = shown_from_view(session.view, self.picture.shown)
+        self.opening = (session, path)
         self._put(Picture(History(session), session if saved else None, path, shown))
         self.jobs.submit("open", work.open_session, session, title=f"Opening {_name(session, path)}")
 
@@ -86,10 +88,15 @@ class Desk(QObject):
             self.jobs.cancel("follow")
             return
         bench = self.bench.updated(picture.session)
-        frames = [frame for frame in range(picture.run.frames) if frame not in picture.traces]
+        frames = [f for f in range(picture.run.frames) if not self._is_traced(f)]
         self.jobs.submit(
             "follow", work.follow_regions, bench, picture.session, frames, urgency=LATER, title="Following"
         )
+
+    def _is_traced(self, frame: int) -> bool:
+        """Whether the numbers of every region are known on a frame, as the session is now."""
+        traced, session = self.picture.traces.get(frame), self.picture.session
+        return traced is not None and all(traced.basis.holds(session, r) for r in session.regions)
 
     # -- editing -------------------------------------------------------------------------------------
 
@@ -240,13 +247,16 @@ class Desk(QObject):
         self._put(picture.with_(history=History(session), saved=saved, run=opened.facts, notice=notice))
 
     def _failed(self, answer: Answer) -> None:
-        if answer.kind == "open" and answer.questions:
-            self._put(self.picture.with_(questions=answer))
+        if answer.kind == "open":
+            offers = (("Answer …", "sheet.reading"),) if answer.questions else ()
+            notice = Notice(answer.error, offers=offers)
+            kept = self.picture if self.picture.path is not None else Picture(shown=self.picture.shown)
+            self._put(kept.with_(notice=notice))
+            if answer.questions:
+                self.questioned.emit()
             return
-        if answer.kind == "open" and self.picture.path is None:
-            self._put(Picture(shown=self.picture.shown, notice=Notice(answer.error)))
-            return
-        self.after_saving = None
+        if answer.kind == "save":
+            self.after_saving = None
         self.complain(answer.error)
 
     def _tasks_changed(self) -> None:

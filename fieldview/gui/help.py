@@ -47,7 +47,8 @@ class HelpPage(QDialog):
         self.text.setOpenExternalLinks(False)
         theme = window.theme
         self.text.document().setDefaultStyleSheet(
-            f"h2 {{ color: {theme.accent}; }} td {{ padding-right: 12px; }} .source {{ color: {theme.muted}; }}"
+            f"h2 {{ color: {theme.accent}; }} td {{ padding-right: 12px; }} "
+            f".source {{ color: {theme.muted}; }}"
         )
         self.text.setHtml(f"<h2>{title}</h2>{body}")
         column.addWidget(self.text)

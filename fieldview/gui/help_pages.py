@@ -3,22 +3,27 @@
 from __future__ import annotations
 
 _CANVAS = """
-<p>Arrows over a map of one quantity. An arrow's tail is on its node. Arrows are thinned so that they stand at
-least 12 pixels apart; the legend says how many are left out. Colours and arrow length stay the same from frame
+<p>Arrows over a map of one quantity. An arrow's tail is on its node. Arrows are thinned so that they
+stand at
+least 12 pixels apart; the legend says how many are left out. Colours and arrow length stay the same from
+frame
 to frame until you ask (View menu).</p>
 <table>
 <tr><td>solid arrow</td><td>measured</td></tr>
 <tr><td>arrow with a ring at its tail</td><td>filled from its surroundings</td></tr>
 <tr><td>cross</td><td>rejected</td></tr><tr><td>dot</td><td>missing</td></tr>
 <tr><td>hatching</td><td>masked</td></tr></table>
-<p>Wheel: zoom at the pointer. Middle drag, or Space and drag: pan. F or a double click: fit. A tap on Space:
+<p>Wheel: zoom at the pointer. Middle drag, or Space and drag: pan. F or a double click: fit. A tap on
+Space:
 play.</p>
 <p>Drawing: click corners, Return or a double click closes, Backspace takes one back, Esc drops the drawing,
-Shift keeps it straight or square. Drag a region's handles or its inside with Move (V); the numbers follow.</p>
+Shift keeps it straight or square. Drag a region's handles or its inside with Move (V); the numbers
+follow.</p>
 """
 
 _LEDGER = """
-<p>What was done to the vectors, line by line, from the run's own files. A line can be switched off, changed,
+<p>What was done to the vectors, line by line, from the run's own files. A line can be switched off,
+changed,
 moved or taken out; what stands above it is not computed again. The measurement itself is never changed.</p>
 <p><b>Median test.</b> A vector is rejected where |U − U<sub>m</sub>| / (r<sub>m</sub> + ε) exceeds the
 threshold; U<sub>m</sub> and r<sub>m</sub> are the medians of its neighbours and of their residuals.
@@ -27,15 +32,18 @@ threshold; U<sub>m</sub> and r<sub>m</sub> are the medians of its neighbours and
 <p><b>Spread and time test.</b> Distance from the median beyond limit × 1.4826 MAD, in the frame or in time.
 <span class="source">Hampel identifier; 1.4826 = 1/Φ<sup>−1</sup>(0.75).</span></p>
 <p><b>Fill.</b> linear: triangles inside the hull of the measured nodes; harmonic: ∇² = 0 across the gap;
-biharmonic: smooth in slope as well. Masked nodes are never filled. The uncertainty of filled vectors follows
+biharmonic: smooth in slope as well. Masked nodes are never filled. The uncertainty of filled vectors
+follows
 from the weights.</p>
 <p><b>Smooth.</b> gaussian, Savitzky–Golay <span class="source">(1964)</span>, or penalised least squares
-<span class="source">(Garcia 2010, Comput. Stat. Data Anal. 54:1167–1178)</span>. Smoothing correlates errors,
+<span class="source">(Garcia 2010, Comput. Stat. Data Anal. 54:1167–1178)</span>. Smoothing correlates
+errors,
 which the uncertainties follow.</p>
 """
 
 _QUANTITIES = """
-<p>A card for every quantity: a small map, its range, and how many times its own uncertainty the largest value
+<p>A card for every quantity: a small map, its range, and how many times its own uncertainty the largest
+value
 is. Click a card to show its map; the buttons draw it as iso-lines or colour the arrows by it.</p>
 <table>
 <tr><td>vorticity</td><td>ω = ∂v/∂x − ∂u/∂y, counter-clockwise positive</td></tr>
@@ -43,14 +51,17 @@ is. Click a card to show its map; the buttons draw it as iso-lines or colour the
 <tr><td>shear strain rate</td><td>ε<sub>xy</sub> = ½ (∂u/∂y + ∂v/∂x)</td></tr>
 <tr><td>swirling strength</td><td>imaginary part of the velocity gradient's eigenvalues
 <span class="source">Zhou et al. (1999) J. Fluid Mech. 387:353–396</span></td></tr></table>
-<p>The derivative scheme changes every card. Noise gain of ω, independent errors: central 1.00, Richardson 1.34,
+<p>The derivative scheme changes every card. Noise gain of ω, independent errors: central 1.00,
+Richardson 1.34,
 least squares 0.45, circulation 0.61, in σ/Δ; a quieter scheme blurs peaks more.
 <span class="source">Raffel et al., Particle Image Velocimetry: A Practical Guide.</span></p>
 """
 
 _READOUT = """
-<p>The node nearest to the pointer: position, components with their uncertainty, the shown quantity, the node's
-status, and what became of its vector: which line rejected it, with residual and limit, and which line filled
+<p>The node nearest to the pointer: position, components with their uncertainty, the shown quantity, the
+node's
+status, and what became of its vector: which line rejected it, with residual and limit, and which line
+filled
 it. Probe (P) holds a place.</p>
 """
 
@@ -71,40 +82,50 @@ interpolant of its cell; its line integral is exact.</p>
 <tr><td>index</td><td>turns of the velocity along the contour: +1 for a vortex, −1 for a saddle
 <span class="source">(Poincaré)</span></td></tr>
 <tr><td>∫u·dl, ∫u·n ds</td><td>for a line: along its direction, and across to the right</td></tr></table>
-<p>u<sub>c</sub>² = u<sub>random</sub>² + Σ (c<sub>k</sub>u<sub>k</sub>)² + (resolution gap² + window gap²)/3.
+<p>u<sub>c</sub>² = u<sub>random</sub>² + Σ (c<sub>k</sub>u<sub>k</sub>)² + (resolution gap² + window
+gap²)/3.
 The random part is exact under the stated errors and their correlation.
 <span class="source">JCGM 100:2008, 5.2; JCGM 102:2011.</span> A number smaller than its U is muted.</p>
 """
 
 _DRAWER = """
-<p><b>Around</b>: tangential and normal component along the contour. <b>Growth</b>: Γ and Φ as the contour is
-scaled about its centroid; a plateau of Γ means that the vortex is inside. <b>Over time</b>: the region's number
+<p><b>Around</b>: tangential and normal component along the contour. <b>Growth</b>: Γ and Φ as the
+contour is
+scaled about its centroid; a plateau of Γ means that the vortex is inside. <b>Over time</b>: the region's
+number
 on every frame, measured in the background on request. <b>Profile</b>: the components along a line.
 <b>Budget</b>: what contributes how much to U.</p>
 """
 
 _TIME = """
 <p>A tick for every frame; its filled part is the share measured, once the frame has been looked at. Drag to
-scrub, ←/→ step, Home and End, a tap on Space plays. <b>mean</b> shows the mean of the measured vectors over the
+scrub, ←/→ step, Home and End, a tap on Space plays. <b>mean</b> shows the mean of the measured vectors
+over the
 run, <b>fluct.</b> the frame less that mean.</p>
 """
 
 _UNCERTAINTY = """
-<p>Sigma is the standard uncertainty of one vector's component. Vectors of overlapping windows share particles,
-so their errors are correlated over window size / spacing nodes: 1 without overlap, 2 at 50 %, 4 at 75 %. Parts
+<p>Sigma is the standard uncertainty of one vector's component. Vectors of overlapping windows share
+particles,
+so their errors are correlated over window size / spacing nodes: 1 without overlap, 2 at 50 %, 4 at 75 %.
+Parts
 common to every vector do not average out; each is carried through with its own sensitivity.
 <span class="source">JCGM 100:2008.</span></p>
 """
 
 _CALIBRATION = """
-<p>Metres per pixel from a distance that is known, and the time between the two pulses. The frame interval is
-another time: it spaces the frames of the run. Reversing one axis changes the sign of every vorticity and Γ; the
+<p>Metres per pixel from a distance that is known, and the time between the two pulses. The frame
+interval is
+another time: it spaces the frames of the run. Reversing one axis changes the sign of every vorticity and
+Γ; the
 flux keeps its sign.</p>
 """
 
 _READING = """
-<p>What a file does not say is asked for: units, which column is which, the pulse separation. Whether y grows
-downward and whether a positive v points downward are two questions; the sign of the strongest vorticity shows a
+<p>What a file does not say is asked for: units, which column is which, the pulse separation. Whether y
+grows
+downward and whether a positive v points downward are two questions; the sign of the strongest vorticity
+shows a
 mistake.</p>
 """
 

@@ -146,6 +146,35 @@ class Measured:
     whole: bool = True
 
 
+@dataclass(frozen=True, eq=False)
+class Basis:
+    """The session that numbers over the run were made from."""
+
+    session: Session
+
+    def holds(self, session: Session | None, region: Region | None) -> bool:
+        """Whether they are still the numbers of this region in this session."""
+        return (
+            session is not None
+            and region in self.session.regions
+            and session.line == self.session.line
+            and field_parts(session) == field_parts(self.session)
+        )
+
+
+@dataclass(frozen=True, eq=False)
+class Traced:
+    """The rows of every region on one frame of the run, by name."""
+
+    basis: Basis
+    rows: Mapping[str, Mapping[str, Any]]
+
+
+def field_parts(session: Session) -> tuple:
+    """What of a session its evaluated fields depend on."""
+    return (session.run, session.units, session.ledger, session.error_model, session.derivative)
+
+
 @dataclass(frozen=True)
 class Notice:
     """A sentence for the banner; ``offers`` are (text, command id) of its buttons."""
@@ -174,7 +203,7 @@ class Picture:
     cards: Mapping[str, Card] = attribute(default_factory=lambda: NOTHING)
     measured: Mapping[str, Measured] = attribute(default_factory=lambda: NOTHING)
     shares: Mapping[int, float] = attribute(default_factory=lambda: NOTHING)
-    traces: Mapping[str, Any] = attribute(default_factory=lambda: NOTHING)
+    traces: Mapping[int, Traced] = attribute(default_factory=lambda: NOTHING)
     curve: Curve | None = None
     draft: Region | None = None
     draft_of: str | None = None
@@ -182,7 +211,6 @@ class Picture:
     cursor: complex | None = None
     notice: Notice | None = None
     tasks: tuple[Task, ...] = ()
-    questions: Any = None
 
     @property
     def session(self) -> Session | None:

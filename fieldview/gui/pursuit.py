@@ -7,7 +7,7 @@ import numpy as np
 from fieldview.gui import wording, work
 from fieldview.gui.canvas.arrows import typical_speed
 from fieldview.gui.jobs import LATER, Answer
-from fieldview.gui.picture import Card, MapOf, Measured, Picture
+from fieldview.gui.picture import Card, MapOf, Measured, Picture, field_parts
 
 
 class Pursuit:
@@ -19,6 +19,7 @@ class Pursuit:
     def __init__(self, desk):
         self._desk = desk
         self._keys: dict[str, object] = {}
+        self._share_parts: tuple | None = None
 
     def forget(self) -> None:
         self._keys.clear()
@@ -123,11 +124,13 @@ class Pursuit:
     def _got_field(self, got: work.Evaluated) -> None:
         self._desk.bench = got.bench
         picture = self._desk.picture
-        shares = picture.shares
+        parts = field_parts(picture.session)
+        shares = picture.shares if parts == self._share_parts else {}
+        self._share_parts = parts
         if picture.shown.source == "frame" and picture.shown.as_of is None:
             shares = {**shares, got.frame: work.measured_share(got.field)}
         shown = picture.shown
-        changes = {}
+        changes = {} if got.frame == shown.frame or got.facts is None else {"frame": got.frame}
         if shown.speed is None and got.field.in_plane:
             changes["speed"] = reference_speed(typical_speed(got.field))
         names = work.available(got.field)
@@ -143,6 +146,7 @@ class Pursuit:
             prepared=got.prepared,
             map=got.map,
             measured=measured,
+            run=got.facts or picture.run,
             shares=shares,
             shown=picture.showing(**changes).shown,
         )
@@ -174,8 +178,8 @@ class Pursuit:
             self._desk.update(cards={**self._desk.picture.cards, got.name: got})
 
     def _got_follow(self, got) -> None:
-        frame, share, rows = got
-        traces = {**self._desk.picture.traces, frame: rows}
+        frame, share, traced = got
+        traces = {**self._desk.picture.traces, frame: traced}
         self._desk.update(traces=traces, shares={**self._desk.picture.shares, frame: share})
 
     def _with_levels(self, got: MapOf):
@@ -183,11 +187,6 @@ class Pursuit:
         if got.name in shown.levels:
             return shown
         return self._desk.picture.showing(levels={**shown.levels, got.name: levels_of(got)}).shown
-
-
-def field_parts(session) -> tuple:
-    """What of a session the evaluated field depends on."""
-    return (session.run, session.units, session.ledger, session.error_model, session.derivative)
 
 
 def levels_of(shown: MapOf) -> tuple[float, float]:

@@ -59,6 +59,7 @@ class MainWindow(QMainWindow):
         self._build()
         self.tools = {tool.id: tool.make(self.desk) for tool in TOOLS}
         self.desk.redrawn.connect(self._redraw)
+        self.desk.questioned.connect(self.ask_reading)
         QGuiApplication.styleHints().colorSchemeChanged.connect(self._follow_desktop)
         self.set_theme(self.theme)
         self._restore()
@@ -226,6 +227,20 @@ class MainWindow(QMainWindow):
         self.time_strip.stop()
         self.desk.jobs.close()
         event.accept()
+
+    def ask_reading(self) -> None:
+        """Open the reading sheet for what could not be opened, or for the run that is open."""
+        picture = self.desk.picture
+        if picture.run is not None:
+            session, path, why = picture.session, picture.path, ""
+        elif self.desk.opening is not None:
+            session, path = self.desk.opening
+            why = picture.notice.text if picture.notice is not None else ""
+        else:
+            return
+        from fieldview.gui.reading_sheet import ReadingSheet
+
+        ReadingSheet(self, session, path, why).show()
 
     def save_and_close(self) -> None:
         """Save, then close once the file is written."""

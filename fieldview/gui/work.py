@@ -14,7 +14,7 @@ import numpy as np
 from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field, Status
 from fieldview.gui.jobs import Progress
-from fieldview.gui.picture import Card, Curve, IsoLines, MapOf, Measured, RunFacts
+from fieldview.gui.picture import Basis, Card, Curve, IsoLines, MapOf, Measured, RunFacts, Traced
 from fieldview.session.models import RunSource, Session
 
 THUMBNAIL = (96, 48)
@@ -43,6 +43,7 @@ class Evaluated:
     map: MapOf | None
     prepared: Any
     measured: dict[str, Measured]
+    facts: RunFacts | None = None
 
 
 def session_of_files(paths) -> Session:
@@ -74,14 +75,17 @@ def evaluate(
     """One frame (or the run's mean) after the ledger, mapped, and its regions measured quickly."""
     from fieldview.compute.region import prepare
 
-    bench = bench.updated(session)
+    run_before, bench = bench.run, bench.updated(session)
+    facts = _facts(bench.run) if bench.run is not run_before else None
+    frame = min(frame, len(bench.run) - 1)
     if source == "mean":
         field, tallies = bench.field("mean", upto=as_of), ()
     else:
         field, tallies = bench.field(frame, upto=as_of), tuple(bench.tallies(frame))
     prepared = prepare(field)
     measured = {m.region.name: m for m in measure_quickly(session, field, prepared, session.regions)}
-    return Evaluated(bench, field, frame, tallies, quick_map(field, quantity), prepared, measured)
+    shown = quick_map(field, quantity)
+    return Evaluated(bench, field, frame, tallies, shown, prepared, measured, facts)
 
 
 def measure_quickly(session: Session, field: Field, prepared: Any, wanted) -> list[Measured]:
@@ -207,15 +211,16 @@ def measured_share(field: Field) -> float:
     return field.count(Status.MEASURED) / unmasked if unmasked else 0.0
 
 
-def follow_regions(bench: Any, session: Session, frames) -> Iterator[tuple[int, float, dict] | Progress]:
+def follow_regions(bench: Any, session: Session, frames) -> Iterator[tuple[int, float, Traced] | Progress]:
     """The rows of every region, frame by frame, with the share measured."""
     from fieldview.session.measure import measure_field, region_row
 
+    basis = Basis(session)
     for number, frame in enumerate(frames):
         field = bench.field(frame)
         numbers = measure_field(session, field)
         rows = {region.name: region_row(region, numbers[region.name]) for region in session.regions}
-        yield frame, measured_share(field), rows
+        yield frame, measured_share(field), Traced(basis, rows)
         yield Progress((number + 1) / len(frames))
 
 

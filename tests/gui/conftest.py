@@ -2,6 +2,7 @@
 
 import gc
 import os
+import shutil
 import threading
 
 os.environ.setdefault("QT_QPA_PLATFORM", "offscreen")
@@ -49,13 +50,17 @@ def own_places(tmp_path, monkeypatch):
         monkeypatch.setenv(f"XDG_{name}_HOME", str(tmp_path / "home" / name.lower()))
 
 
-@pytest.fixture
-def run_folder(tmp_path):
-    folder = tmp_path / "run"
-    folder.mkdir()
+@pytest.fixture(scope="session")
+def frames_on_disk(tmp_path_factory):
+    folder = tmp_path_factory.mktemp("frames")
     for frame in range(FRAMES):
         write_frame(folder / f"f{frame}.csv", vortex_frame(frame))
     return folder
+
+
+@pytest.fixture
+def run_folder(tmp_path, frames_on_disk):
+    return shutil.copytree(frames_on_disk, tmp_path / "run")
 
 
 @pytest.fixture
@@ -116,24 +121,30 @@ def put_away(window) -> None:
 
 def sweep() -> None:
     """Let everything that was marked for deletion go."""
-    for _ in range(3):
+    for _ in range(2):
         QCoreApplication.sendPostedEvents(None, QEvent.Type.DeferredDelete)
         QApplication.processEvents()
-    gc.collect()
 
 
 @pytest.fixture(autouse=True)
 def nothing_left(qapp):
-    """No test may leave a widget, a running timer or a thread of ours behind."""
+    """No test may leave a widget or a thread of ours behind."""
     widgets_before = set(map(id, QApplication.topLevelWidgets()))
     yield
     sweep()
     left = [w for w in QApplication.topLevelWidgets() if id(w) not in widgets_before]
     assert not left, f"widgets left behind: {left}"
-    timers = [o for o in gc.get_objects() if type(o) is QTimer and is_running(o)]
-    assert not timers, f"timers left running: {timers}"
     threads = [t.name for t in threading.enumerate() if t.name.startswith("loopflux")]
     assert not threads, f"threads left behind: {threads}"
+
+
+@pytest.fixture(autouse=True, scope="module")
+def no_timer_left(qapp):
+    """No file of tests may leave a timer running (asked once a file: the search is slow)."""
+    yield
+    gc.collect()
+    timers = [o for o in gc.get_objects() if type(o) is QTimer and is_running(o)]
+    assert not timers, f"timers left running: {timers}"
 
 
 def is_running(timer: QTimer) -> bool:

@@ -96,7 +96,7 @@ def test_a_click_on_a_card_shows_its_map_and_buttons_its_lines(window, qtbot):
     QTest.mouseClick(view.viewport(), Qt.MouseButton.LeftButton, pos=view.visualRect(index).center())
     settle(qtbot, window)
     assert window.desk.picture.map.name == "divergence"
-    assert "divergence" in window.canvas.colour_bar._bar.label
+    assert "∇·u" in window.canvas.colour_bar._bar.label
     QTest.mouseClick(window.quantities.iso, Qt.MouseButton.LeftButton)
     settle(qtbot, window)
     assert window.desk.picture.iso_now.name == "divergence"

@@ -11,8 +11,12 @@ TRACE_KEYS = (("circulation",), ("line_integral",), ("through_flow",))
 def trace_of(picture: Picture, name: str) -> list[tuple[int, float, float | None]]:
     """Γ (or what a region has instead) of the frames measured so far: (frame, value, combined U)."""
     points = []
+    region = next((r for r in picture.regions if r.name == name), None)
+    right: dict[int, bool] = {}
     for frame in sorted(picture.traces):
-        row = picture.traces[frame].get(name)
+        traced = picture.traces[frame]
+        still = right.setdefault(id(traced.basis), traced.basis.holds(picture.session, region))
+        row = traced.rows.get(name) if still else None
         if row is None:
             continue
         found = next((f for key in TRACE_KEYS if (f := figure(row, key)) is not None), None)
