@@ -35,8 +35,10 @@ class CalibrationSheet(Sheet):
         )
         self.take = QPushButton("From the chosen line")
         self.take.setToolTip("Length of the line region that is chosen on the canvas")
+        self.take.setAutoDefault(False)
         self.take.clicked.connect(self._take_line)
         self.use = QPushButton("Use")
+        self.use.setAutoDefault(False)
         self.use.setAccessibleName("Use this distance as the scale")
         self.use.clicked.connect(self._use_distance)
         form.addRow(label("known distance [mm] over [px]"), in_a_row(self.distance, self.pixels, self.use))
@@ -67,6 +69,7 @@ class CalibrationSheet(Sheet):
         self.column.addStretch()
         apply = self.buttons.addButton("Apply", QDialogButtonBox.ButtonRole.ApplyRole)
         close = self.buttons.addButton(QDialogButtonBox.StandardButton.Close)
+        apply.setDefault(True)
         apply.clicked.connect(self.apply)
         close.clicked.connect(self.close)
         self._shown: tuple | None = None

@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from pathlib import Path
 
-from PySide6.QtCore import QObject, Signal
+from PySide6.QtCore import QObject, QTimer, Signal
 
 from fieldview.compute.errors import InputError
 from fieldview.gui import work
@@ -32,6 +32,9 @@ class Desk(QObject):
         self.jobs.answered.connect(self._answered)
         self.jobs.changed.connect(self._tasks_changed)
         self._pursuit = Pursuit(self)
+        self._soon = QTimer(self)
+        self._soon.setSingleShot(True)
+        self._soon.timeout.connect(self.redrawn)
         self.opening: tuple[Session, Path | None] | None = None
         self.after_saving: Callable[[], None] | None = None
 
@@ -212,6 +215,11 @@ class Desk(QObject):
     def tell(self, text: str, *offers: tuple[str, str]) -> None:
         self._put(self.picture.with_(notice=Notice(text, grave=False, offers=offers)))
 
+    @property
+    def idle(self) -> bool:
+        """Whether nothing is being worked on and everything that came is drawn."""
+        return self.jobs.idle and not self._soon.isActive()
+
     def dismiss(self) -> None:
         if self.picture.notice is not None:
             self._put(self.picture.with_(notice=None))
@@ -220,7 +228,7 @@ class Desk(QObject):
 
     def update(self, **changes) -> None:
         """Put answers of background work into the picture."""
-        self._put(self.picture.with_(**changes))
+        self._put(self.picture.with_(**changes), soon=True)
 
     def _answered(self, answer: Answer) -> None:
         if answer.failed:
@@ -260,13 +268,19 @@ class Desk(QObject):
         self.complain(answer.error)
 
     def _tasks_changed(self) -> None:
-        self._put(self.picture.with_(tasks=self.jobs.tasks), pursue=False)
+        self._put(self.picture.with_(tasks=self.jobs.tasks), pursue=False, soon=True)
 
-    def _put(self, picture: Picture, *, pursue: bool = True) -> None:
+    def _put(self, picture: Picture, *, pursue: bool = True, soon: bool = False) -> None:
+        """Put a new picture in place. What the user did is drawn at once; answers that come in numbers are
+        drawn together, at the next turn of the event loop."""
         self.picture = picture
         if pursue:
             self._pursuit.pursue()
-        self.redrawn.emit()
+        if soon:
+            self._soon.start()
+        else:
+            self._soon.stop()
+            self.redrawn.emit()
 
 
 def checked(session: Session, **changes) -> Session:

@@ -35,6 +35,8 @@ class Finder(QDialog):
         self.list.clear()
         words = text.lower().split()
         for command in self._actions.commands.values():
+            if not command.menu:
+                continue
             action = self._actions[command.id]
             title = action.text().replace("&", "")
             if all(word in f"{title} {command.menu} {command.hint}".lower() for word in words):

@@ -101,7 +101,7 @@ _TIME = """
 <p>A tick for every frame; its filled part is the share measured, once the frame has been looked at. Drag to
 scrub, ←/→ step, Home and End, a tap on Space plays. <b>mean</b> shows the mean of the measured vectors
 over the
-run, <b>fluct.</b> the frame less that mean.</p>
+run.</p>
 """
 
 _UNCERTAINTY = """

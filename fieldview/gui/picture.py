@@ -26,7 +26,7 @@ class Shown:
 
     Attributes
     ----------
-    source : "frame", "mean" or "fluctuation"
+    source : "frame" or "mean"
     as_of : int or None
         Number of ledger lines that are applied; None is all.
     levels : mapping of quantity name to (low, high)

@@ -38,7 +38,7 @@ class UncertaintySheet(Sheet):
             "All are standard uncertainties (k = 1). What is left empty counts as not stated, and every "
             "number says so.",
         )
-        self.resize(520, 560)
+        self.resize(620, 600)
         form = QFormLayout()
         form.setVerticalSpacing(6)
         self.source = QComboBox()
@@ -76,6 +76,7 @@ class UncertaintySheet(Sheet):
         self.column.addStretch()
         apply = self.buttons.addButton("Apply", QDialogButtonBox.ButtonRole.ApplyRole)
         close = self.buttons.addButton(QDialogButtonBox.StandardButton.Close)
+        apply.setDefault(True)
         apply.clicked.connect(self.apply)
         close.clicked.connect(self.close)
         self._shown: Uncertainties | None = None

@@ -77,7 +77,7 @@ class MainWindow(QMainWindow):
     @property
     def idle(self) -> bool:
         """True when no background work is pending."""
-        return self.desk.jobs.idle
+        return self.desk.idle
 
     def open(self, paths) -> None:
         """Open a session file or the files of a run."""
@@ -111,7 +111,7 @@ class MainWindow(QMainWindow):
         self._pages.addWidget(self.start)
         self._pages.addWidget(self._work_page())
         self.setCentralWidget(self._pages)
-        self.banner = Banner(self.desk, self.actions_table.run, self._pages)
+        self.banner = Banner(self.desk, self.actions_table.run, self._pages, self.canvas)
         self.status = StatusLine(self.desk)
         self.setStatusBar(self.status)
         self.actions_table.bind("canvas", self.canvas, self.time_strip)

@@ -1,6 +1,5 @@
 """Help for the panel in use, and what the program is."""
 
-import pytest
 from PySide6.QtCore import Qt
 from PySide6.QtWidgets import QWidget
 
@@ -9,12 +8,12 @@ from fieldview.gui.help_pages import PAGES
 from tests.gui.conftest import action, key
 
 
-@pytest.mark.parametrize("topic", sorted(PAGES))
-def test_every_page_can_be_shown(window, topic):
-    page = HelpPage(window, topic)
-    page.show()
-    assert len(page.text.toPlainText()) > 100
-    page.close()
+def test_every_page_can_be_shown(window):
+    for topic in PAGES:
+        page = HelpPage(window, topic)
+        page.show()
+        assert len(page.text.toPlainText()) > 100, topic
+        page.close()
 
 
 def test_f1_shows_the_page_of_the_panel_in_use(window):

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from PySide6.QtCore import QEvent, Qt
+from PySide6.QtCore import QEvent, QPoint, QRect, Qt
 from PySide6.QtWidgets import QFrame, QHBoxLayout, QPushButton, QWidget
 
 from fieldview.gui.panels.base import label, set_property
@@ -10,13 +10,13 @@ from fieldview.gui.picture import Notice, Picture
 
 
 class Banner(QFrame):
-    """Lies over the top of its parent and keeps its width."""
+    """Lies in its parent, over the top of the canvas while that is there."""
 
     MARGIN = 12
 
-    def __init__(self, desk, run_command, parent: QWidget):
+    def __init__(self, desk, run_command, parent: QWidget, over: QWidget):
         super().__init__(parent)
-        self._desk, self._run_command = desk, run_command
+        self._desk, self._run_command, self._over = desk, run_command, over
         self.setObjectName("banner")
         self.setProperty("role", "banner")
         self.setAccessibleName("Message")
@@ -64,7 +64,10 @@ class Banner(QFrame):
         return False
 
     def _place(self):
-        width = min(self.parent().width() - 2 * self.MARGIN, 760)
+        place = self.parent().rect()
+        if self._over.isVisible():
+            place = QRect(self._over.mapTo(self.parent(), QPoint()), self._over.size())
+        width = min(place.width() - 2 * self.MARGIN, 760)
         width = max(width, 200)
         self.resize(width, self.layout().totalHeightForWidth(width))
-        self.move((self.parent().width() - self.width()) // 2, self.MARGIN)
+        self.move(place.center().x() - width // 2, place.top() + self.MARGIN)

@@ -49,10 +49,9 @@ class Drawer(QWidget):
         self.tabs.currentChanged.connect(lambda place: desk.show(drawer=TABS[place][0]))
         column.addWidget(self.tabs)
         self.pages = QStackedWidget()
-        self.plots = {name: Plot(f"plot_{name}") for name, _ in TABS if name != "budget"}
-        self.budget = Budget()
-        for name, _ in TABS:
-            self.pages.addWidget(self.plots.get(name, self.budget))
+        self.plot, self.budget = Plot("drawer_plot"), Budget()
+        self.pages.addWidget(self.plot)
+        self.pages.addWidget(self.budget)
         column.addWidget(self.pages, 1)
         self.said = label("", "muted", wrap=True)
         column.addWidget(self.said)
@@ -60,15 +59,14 @@ class Drawer(QWidget):
 
     def set_theme(self, theme: Theme) -> None:
         self.theme = self.budget.theme = theme
-        for plot in self.plots.values():
-            plot.set_theme(theme)
+        self.plot.set_theme(theme)
         self._seen = None
 
     def draw(self, picture: Picture) -> None:
         place = next(i for i, (name, _) in enumerate(TABS) if name == picture.shown.drawer)
         if self.tabs.currentIndex() != place:
             self.tabs.setCurrentIndex(place)
-        self.pages.setCurrentIndex(place)
+        self.pages.setCurrentIndex(int(picture.shown.drawer == "budget"))
         name, region = picture.shown.drawer, picture.selected
         curve = picture.curve_now
         seen = (name, region, curve, picture.traces, picture.shown.coverage, picture.shown.frame, self.theme)
@@ -77,7 +75,7 @@ class Drawer(QWidget):
             self.said.setText("")
         elif self._seen is None or any(a is not b for a, b in zip(seen, self._seen, strict=True)):
             self._seen = seen
-            self.said.setText(_DRAW[name](self.plots[name], picture, self._colour(picture)))
+            self.said.setText(_DRAW[name](self.plot, picture, self._colour(picture)))
 
     def _colour(self, picture: Picture) -> str:
         for place, region in enumerate(picture.regions):

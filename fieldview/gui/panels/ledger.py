@@ -134,6 +134,7 @@ class LedgerLine(QFrame):
         self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
         self.setAcceptDrops(True)
         self._pressed: QPoint | None = None
+        self._seen: tuple | None = None
         grid = QGridLayout(self)
         grid.setContentsMargins(0, 6, 4, 6)
         grid.setHorizontalSpacing(6)
@@ -188,14 +189,20 @@ class LedgerLine(QFrame):
         return box
 
     def draw(self, picture: Picture) -> None:
-        from fieldview.session.ledger import sentence
-
         step = picture.session.ledger[self.number]
         tally = next((t for t in picture.tallies if t.line == self.number and t.step == step.step), None)
+        seen = (step, tally, picture.shown.line, picture.shown.as_of, picture.stale, colour_of(self, False))
+        if self._seen is None or any(a is not b for a, b in zip(seen, self._seen, strict=True)):
+            self._seen = seen
+            self._show(picture, step, tally)
+
+    def _show(self, picture: Picture, step, tally) -> None:
+        from fieldview.session.ledger import sentence
+
         beyond = picture.shown.as_of is not None and self.number >= picture.shown.as_of
         words = sentence(step)
         title = ledger_edits.title_of(type(step))
-        colour = picture_muted(self, beyond or not step.on)
+        colour = colour_of(self, beyond or not step.on)
         head, rest = (title, words[len(title) :]) if words.startswith(title) else words.split(" ", 1)
         gap = "" if rest.startswith((",", " ")) else " "
         self.title.setText(f'<span style="color:{colour}"><b>{escaped(head)}</b>{gap}{escaped(rest)}</span>')
@@ -262,7 +269,7 @@ class LedgerLine(QFrame):
                 super().keyPressEvent(event)
 
 
-def picture_muted(widget: QWidget, muted: bool) -> str:
+def colour_of(widget: QWidget, muted: bool) -> str:
     """The colour of a line's words: quiet where it takes no part."""
     panel = widget.parent()
     while panel is not None and not isinstance(panel, Panel):

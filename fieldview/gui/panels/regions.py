@@ -53,6 +53,7 @@ class Regions(Panel):
         self.heading_row.addWidget(self._said)
         self.heading_row.addStretch()
         self.heading_row.addWidget(self._coverage)
+        self._seen: tuple = ()
         self.model = RegionModel(desk, self)
         self.view = dense(QTableView())
         self.view.setProperty("role", "paper")
@@ -69,7 +70,11 @@ class Regions(Panel):
 
     def draw(self, picture: Picture) -> None:
         self.model.muted = QColor(self.theme.muted)
-        self.model.put(*table(picture))
+        measured = [picture.measured_of(region) for region in picture.regions]
+        seen = (*picture.regions, *measured, picture.shown.coverage, picture.stale, self.theme)
+        if len(seen) != len(self._seen) or any(a is not b for a, b in zip(seen, self._seen, strict=True)):
+            self._seen = seen
+            self.model.put(*table(picture))
         self.view.setVisible(bool(picture.regions))
         self._empty.setVisible(not picture.regions)
         k = picture.shown.coverage

@@ -24,7 +24,7 @@ from fieldview.gui.panels.traces import trace_of
 from fieldview.gui.picture import Picture
 from fieldview.gui.theme import LIGHT, Theme
 
-SOURCES = (("frame", "frame"), ("mean", "mean"), ("fluctuation", "fluct."))
+SOURCES = (("frame", "frame"), ("mean", "mean"))
 RATES = (1, 2, 5, 10, 20, 50)
 
 
