@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from pathlib import Path
 
+from pydantic import ValidationError
 from PySide6.QtCore import QObject, QTimer, Signal
 
 from fieldview.compute.errors import InputError
@@ -153,9 +154,15 @@ class Desk(QObject):
     def change_region(self, name: str, region, title: str) -> None:
         """Put a region in another's place (a new name keeps it selected)."""
         session = self.picture.session
-        regions = tuple(region if r.name == name else r for r in session.regions)
         try:
+            # a copy with changes has not been checked; a region built anew has
+            region = type(region).model_validate(region.model_dump())
+            regions = tuple(region if r.name == name else r for r in session.regions)
             changed = checked(session, regions=regions)
+        except ValidationError as error:
+            self.drop_draft()
+            self.complain(f"{name}: {plain(error)}.")
+            return
         except InputError as error:
             self.drop_draft()
             self.complain(str(error))
@@ -285,16 +292,20 @@ class Desk(QObject):
 
 def checked(session: Session, **changes) -> Session:
     """The session with changes, validated as a whole; raises InputError with one plain sentence."""
-    from pydantic import ValidationError
-
     kept = {name: getattr(session, name) for name in Session.model_fields}
     try:
         return Session.model_validate({**kept, **changes}).in_folder(session.folder)
     except ValidationError as error:
-        first = error.errors()[0]
-        place = ".".join(str(part) for part in first["loc"])
-        message = first["msg"].removeprefix("Value error, ")
-        raise InputError(f"{place}: {message}" if place else message) from None
+        raise InputError(plain(error)) from None
+
+
+def plain(error: ValidationError) -> str:
+    """The first thing that is wrong, with its place."""
+    first = error.errors()[0]
+    place = ".".join(str(part) for part in first["loc"])
+    message = first["msg"].removeprefix("Value error, ")
+    message = message[:1].lower() + message[1:]
+    return f"{place}: {message}" if place else message
 
 
 _KEPT = ("frame", "quantity", "iso_lines", "arrow_colour", "rejected_arrows", "coverage", "arrow_stretch")

@@ -13,7 +13,8 @@ to frame until you ask (View menu).</p>
 <tr><td>arrow with a ring at its tail</td><td>filled from its surroundings</td></tr>
 <tr><td>cross</td><td>rejected</td></tr><tr><td>dot</td><td>missing</td></tr>
 <tr><td>hatching</td><td>masked</td></tr></table>
-<p>Wheel: zoom at the pointer. Middle drag, or Space and drag: pan. F or a double click: fit. A tap on
+<p>Wheel: zoom at the pointer. Right drag: zoom to a box. Middle drag, or Space and drag: pan. F or a
+double click: fit. A tap on
 Space:
 play.</p>
 <p>Drawing: click corners, Return or a double click closes, Backspace takes one back, Esc drops the drawing,

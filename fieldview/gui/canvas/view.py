@@ -39,7 +39,8 @@ class Pointer:
 
 
 class Canvas(pg.GraphicsView):
-    """The field and the regions over it. Wheel zooms at the cursor; middle drag or Space drag pans."""
+    """The field and the regions over it. Wheel zooms at the cursor, right drag zooms to a box, middle drag or
+    Space drag pans."""
 
     play_tapped = Signal()
     range_moved = Signal()
@@ -59,6 +60,7 @@ class Canvas(pg.GraphicsView):
         self._theme: Theme = LIGHT
         self._fitted = True
         self._pan_from: QPointF | None = None
+        self._box_from: complex | None = None
         self._space_down = self._space_used = False
         self._extent: QRectF | None = None
         self._build()
@@ -136,10 +138,10 @@ class Canvas(pg.GraphicsView):
             self.view_box.setRange(self._extent.adjusted(-margin, -margin, margin, margin), padding=0)
 
     def fit_rect(self, low: complex, high: complex) -> None:
-        """Show this rectangle of the plane."""
+        """Show the rectangle of the plane with these opposite corners."""
         self._fitted = False
         self.view_box.setRange(
-            QRectF(QPointF(low.real, low.imag), QPointF(high.real, high.imag)), padding=0.02
+            QRectF(QPointF(low.real, low.imag), QPointF(high.real, high.imag)).normalized(), padding=0.02
         )
 
     def zoom(self, factor: float, about: complex | None = None) -> None:
@@ -208,6 +210,8 @@ class Canvas(pg.GraphicsView):
         ):
             self._pan_from, self._space_used = event.position(), True
             self.viewport().setCursor(Qt.CursorShape.ClosedHandCursor)
+        elif event.button() == Qt.MouseButton.RightButton:
+            self._box_from = self.to_plane(event.position())
         elif self.tool is not None and event.button() == Qt.MouseButton.LeftButton:
             self.tool.press(self.pointer(event))
             self._after_tool()
@@ -217,6 +221,8 @@ class Canvas(pg.GraphicsView):
         if self._pan_from is not None:
             self.pan(event.position() - self._pan_from)
             self._pan_from = event.position()
+        elif self._box_from is not None:
+            self.show_sketch(Sketch(_corners(self._box_from, self.to_plane(event.position())), True, False))
         elif self.tool is not None:
             pointer = self.pointer(event)
             if event.buttons() & Qt.MouseButton.LeftButton:
@@ -230,6 +236,12 @@ class Canvas(pg.GraphicsView):
         if self._pan_from is not None:
             self._pan_from = None
             self._after_tool(self.pointer(event))
+        elif self._box_from is not None and event.button() == Qt.MouseButton.RightButton:
+            start, end = self._box_from, self.to_plane(event.position())
+            self._box_from = None
+            self.show_sketch(None)
+            if min(abs((end - start).real), abs((end - start).imag)) * self.lens().scale > 2 * NEAR:
+                self.fit_rect(start, end)
         elif self.tool is not None and event.button() == Qt.MouseButton.LeftButton:
             self.tool.release(self.pointer(event))
             self._after_tool()
@@ -286,6 +298,10 @@ class Canvas(pg.GraphicsView):
         super().resizeEvent(event)
         if self._fitted:
             self.fit()
+
+
+def _corners(one: complex, other: complex) -> tuple[complex, ...]:
+    return (one, complex(other.real, one.imag), other, complex(one.real, other.imag))
 
 
 def level_indices(values: np.ndarray, low: float, high: float) -> np.ndarray:

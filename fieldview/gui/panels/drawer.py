@@ -11,6 +11,7 @@ from fieldview.gui import wording
 from fieldview.gui.panels.base import label
 from fieldview.gui.panels.budget import Budget
 from fieldview.gui.panels.plots import Plot
+from fieldview.gui.panels.shape import Shape
 from fieldview.gui.panels.traces import trace_of
 from fieldview.gui.picture import Picture
 from fieldview.gui.region_text import TRACE_SYMBOLS
@@ -22,6 +23,7 @@ TABS = (
     ("over_time", "Over time"),
     ("profile", "Profile"),
     ("budget", "Budget"),
+    ("shape", "Shape"),
 )
 
 
@@ -49,9 +51,9 @@ class Drawer(QWidget):
         self.tabs.currentChanged.connect(lambda place: desk.show(drawer=TABS[place][0]))
         column.addWidget(self.tabs)
         self.pages = QStackedWidget()
-        self.plot, self.budget = Plot("drawer_plot"), Budget()
-        self.pages.addWidget(self.plot)
-        self.pages.addWidget(self.budget)
+        self.plot, self.budget, self.shape = Plot("drawer_plot"), Budget(), Shape(desk)
+        for page in (self.plot, self.budget, self.shape):
+            self.pages.addWidget(page)
         column.addWidget(self.pages, 1)
         self.said = label("", "muted", wrap=True)
         column.addWidget(self.said)
@@ -66,13 +68,17 @@ class Drawer(QWidget):
         place = next(i for i, (name, _) in enumerate(TABS) if name == picture.shown.drawer)
         if self.tabs.currentIndex() != place:
             self.tabs.setCurrentIndex(place)
-        self.pages.setCurrentIndex(int(picture.shown.drawer == "budget"))
+        self.pages.setCurrentIndex({"budget": 1, "shape": 2}.get(picture.shown.drawer, 0))
         name, region = picture.shown.drawer, picture.selected
         curve = picture.curve_now
-        seen = (name, region, curve, picture.traces, picture.shown.coverage, picture.shown.frame, self.theme)
+        shown = picture.shown
+        seen = (name, region, curve, picture.session, picture.traces, shown.coverage, shown.frame, self.theme)
         if name == "budget":
             self.budget.draw(picture)
             self.said.setText("")
+        elif name == "shape":
+            self.shape.draw(picture)
+            self.said.setText("Double click or F2 to type a number." if region else "Choose a region.")
         elif self._seen is None or any(a is not b for a, b in zip(seen, self._seen, strict=True)):
             self._seen = seen
             self.said.setText(_DRAW[name](self.plot, picture, self._colour(picture)))
