@@ -7,6 +7,7 @@ treated are marked.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -17,7 +18,10 @@ from fieldview.compute.lines import Line
 from fieldview.compute.stencil_covariance import noise_gain
 from fieldview.compute.stencils import SCHEMES, Scheme, across_weights, scheme_named
 
-__all__ = ["SCHEMES", "Gradient", "derivative", "derivative_rows", "gradient", "noise_gain"]
+__all__ = ["SCHEMES", "Gradient", "combination", "derivative", "derivative_rows", "gradient", "noise_gain"]
+
+_BLOCK_NODES = 40_000
+"""Nodes worked on at a time, so that every pass but the first finds them in the cache."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -68,23 +72,79 @@ def derivative(
     fallback : int ndarray (k,)
         Flat numbers of the nodes that took another stencil than the scheme's own.
     """
+    return combination([(1.0, values, along)], grid, scheme=scheme)
+
+
+def combination(
+    terms: Sequence[tuple[float, np.ndarray, str]], grid: Grid, *, scheme: str = "central"
+) -> tuple[np.ndarray, np.ndarray]:
+    """Sum of factors times derivatives, such as the vorticity, in one go through the memory.
+
+    Parameters
+    ----------
+    terms : sequence of (float, ndarray (ny, nx), "x" or "y")
+        Factor, values and direction of each derivative.
+    grid, scheme
+        As of `derivative`, and so is what is returned.
+    """
     rule = scheme_named(scheme)
-    values = np.asarray(values, float)
-    line = Line(grid, along)
-    slope = line.first_choice(values, rule)
+    terms = [(factor, np.asarray(values, float), Line(grid, along, rule)) for factor, values, along in terms]
     if not rule.across:
-        edges = line.settle_edges(values, slope, rule)
-        # a NaN anywhere would make the sum of squares NaN: without one there are no gaps to look after
-        if np.isfinite(np.dot(slope.ravel(), slope.ravel())):
-            return slope, edges
-        slope.ravel()[edges] = np.nan
-    absent = np.isnan(slope)
+        total = _without_gaps(terms, grid.shape)
+        if total is not None:
+            return total, np.concatenate([line.end_nodes for _, _, line in terms])
+    total, fallback = 0.0, []
+    for factor, values, line in terms:
+        slope, taken = _with_gaps(values, line)
+        total = total + factor * slope
+        fallback.append(taken)
+    return total, np.concatenate(fallback)
+
+
+def _without_gaps(terms, shape: tuple[int, int]) -> np.ndarray | None:
+    """The sum where no value is missing, block by block of rows in the cache; None where one is."""
+    total = np.empty(shape)
+    rows = max(1, _BLOCK_NODES // shape[1])
+    spare = np.empty((rows, shape[1])) if len(terms) > 1 else None
+    for top in range(0, shape[0], rows):
+        bottom = min(top + rows, shape[0])
+        block = total[top:bottom]
+        for number, (factor, values, line) in enumerate(terms):
+            part = block if number == 0 else spare[: bottom - top]
+            line.apply(values, top, bottom, part)
+            if number == 0 and factor != 1:
+                part *= factor
+            elif number > 0:
+                _add(block, factor, part)
+        # a NaN anywhere makes the sum NaN
+        if not np.isfinite(block.sum()):
+            return None
+    return total
+
+
+def _add(total: np.ndarray, factor: float, part: np.ndarray) -> None:
+    if factor == -1:
+        total -= part
+        return
+    if factor != 1:
+        part *= factor
+    total += part
+
+
+def _with_gaps(values: np.ndarray, line: Line) -> tuple[np.ndarray, np.ndarray]:
+    """One derivative where values are missing, and the nodes that took another stencil."""
+    rule = line.rule
+    slope = np.empty(values.shape)
+    line.apply(values, 0, values.shape[0], slope)
     invalid = np.isnan(values)
     slope[invalid] = np.nan
-    absent &= ~invalid
-    needy = np.flatnonzero(absent)
-    taken = []
-    for choice in rule.choices if rule.across else rule.choices[1:]:
+    ends = line.end_nodes[np.isfinite(slope.ravel()[line.end_nodes])]
+    choices = rule.choices[1:]
+    if rule.across:
+        slope, ends, choices = line.averaged_across(slope), ends[:0], rule.choices
+    needy = np.flatnonzero(np.isnan(slope) & ~invalid)
+    taken = [ends]
+    for choice in choices:
         if needy.size == 0:
             break
         inside, members = line.members(needy, choice)
@@ -95,7 +155,7 @@ def derivative(
         slope.ravel()[needy[done]] = found[done]
         taken.append(needy[done])
         needy = needy[~done]
-    return slope, np.concatenate(taken) if taken else needy[:0]
+    return slope, np.concatenate(taken)
 
 
 def derivative_rows(
@@ -118,7 +178,7 @@ def derivative_rows(
     """
     rule = scheme_named(scheme)
     nodes = np.arange(valid.size) if nodes is None else np.asarray(nodes, np.intp)
-    return tuple(_rows(Line(grid, along), rule, valid.ravel(), nodes) for along in ("x", "y"))
+    return tuple(_rows(Line(grid, along, rule), rule, valid.ravel(), nodes) for along in ("x", "y"))
 
 
 def _rows(line: Line, rule: Scheme, valid: np.ndarray, nodes: np.ndarray) -> sp.csr_array:

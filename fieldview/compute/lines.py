@@ -2,82 +2,104 @@
 
 from __future__ import annotations
 
-from functools import cache
+from functools import cache, cached_property
 
 import numpy as np
 
 from fieldview.compute.grid import Grid
 from fieldview.compute.stencils import Choice, Scheme, across_weights
 
-_BLOCK_NODES = 32_000
-"""Nodes worked on at a time, so that every pass but the first finds them in the cache."""
-
 
 class Line:
-    """One of the lattice's two directions: neighbours and weights along it."""
+    """One of the lattice's two directions, "x" or "y": neighbours along it and a scheme's weights."""
 
-    def __init__(self, grid: Grid, along: str):
+    def __init__(self, grid: Grid, along: str, rule: Scheme):
+        self.rule = rule
         self.ny, self.nx = grid.shape
         self.is_x = along == "x"
         self.axis, self.cross = (grid.x, grid.y) if self.is_x else (grid.y, grid.x)
         self.is_uniform = grid.is_uniform[0 if self.is_x else 1]
         self.stride = 1 if self.is_x else self.nx
 
-    def first_choice(self, values: np.ndarray, rule: Scheme) -> np.ndarray:
-        """The scheme's own stencil, NaN where it reaches over the edge or a NaN."""
-        slope = np.empty(values.shape)
-        choice = rule.choices[0]
-        low, high = self._span(choice)
-        if high > low:
-            self._apply(choice, values, slope)
-        self._at(slope, slice(0, min(low, self.axis.size)))[...] = np.nan
-        self._at(slope, slice(max(high, low, 0), None))[...] = np.nan
-        if not rule.across:
-            return slope
-        slope[np.isnan(values)] = np.nan
-        return _averaged_across(slope, self.cross, self.is_x)
+    @cached_property
+    def end_nodes(self) -> np.ndarray:
+        """Flat nodes (k,) at the ends of the axis, where no centred stencil of the scheme fits."""
+        starts = np.arange(self.ny) * self.nx if self.is_x else np.arange(self.nx)
+        return (np.array(self._ends, np.intp)[:, None] * self.stride + starts).ravel()
 
-    def settle_edges(self, values: np.ndarray, slope: np.ndarray, rule: Scheme) -> np.ndarray:
-        """Gives the places at the ends of the axis their best stencil; returns their flat nodes."""
-        low, high = self._span(rule.choices[0])
-        size = self.axis.size
-        ends = [place for place in range(size) if not low <= place < high]
-        for place in ends:
-            for choice in rule.choices[1:]:
+    def apply(self, values: np.ndarray, top: int, bottom: int, out: np.ndarray) -> None:
+        """The scheme's own stencil on the rows top ... bottom - 1 of values (ny, nx), into out (rows, nx).
+
+        The ends of the axis get the first of the other stencils that fits, NaN where none does.
+        """
+        low, high = self._span(self.rule.choices[0])
+        if high > low:
+            (self._apply_even if self.is_uniform else self._apply_uneven)(values, top, bottom, out)
+        for place, first, weights in self._end_stencils:
+            members = slice(first, first + weights.size)
+            if self.is_x:
+                out[:, place] = (values[top:bottom, members] * weights).sum(axis=1)
+            elif top <= place < bottom:
+                out[place - top] = (values[members] * weights[:, None]).sum(axis=0)
+
+    def averaged_across(self, slope: np.ndarray) -> np.ndarray:
+        """Average of each line's slope with its two neighbours'; NaN at the first and last line and place."""
+        averaged = np.full(slope.shape, np.nan)
+        if self.cross.size > 2:
+            lines, target = (slope, averaged) if self.is_x else (slope.T, averaged.T)
+            inner = slice(1, self.axis.size - 1)
+            weights = across_weights(self.cross)
+            parts = [lines[k : self.cross.size - 2 + k, inner] * weights[:, k, None] for k in range(3)]
+            target[1:-1, inner] = parts[0] + parts[1] + parts[2]
+        return averaged
+
+    @cached_property
+    def _ends(self) -> list[int]:
+        low, high = self._span(self.rule.choices[0])
+        return [place for place in range(self.axis.size) if not low <= place < high]
+
+    @cached_property
+    def _end_stencils(self) -> list[tuple[int, int, np.ndarray]]:
+        """For each place at the ends the first node of its stencil and the weights; one NaN where none fits."""
+        found = []
+        for place in self._ends:
+            for choice in self.rule.choices[1:]:
                 first, stop = self._span(choice)
                 if first <= place < stop:
                     weights = self._weights_at(choice, np.array([place]))[0]
-                    sides = [self._at(values, place + k) for k in choice.offsets]
-                    terms = [w * side for w, side in zip(weights, sides, strict=True)]
-                    self._at(slope, place)[...] = sum(terms)
+                    found.append((place, place + choice.first, weights))
                     break
-        starts = np.arange(self.ny) * self.nx if self.is_x else np.arange(self.nx)
-        return (np.array(ends, np.intp)[:, None] * self.stride + starts).ravel()
+            else:
+                found.append((place, place, np.array([np.nan])))
+        return found
 
     def _span(self, choice: Choice) -> tuple[int, int]:
         """Places [low, high) of the axis that the stencil fits."""
         return -choice.first, self.axis.size - choice.last
 
-    def _at(self, array: np.ndarray, places) -> np.ndarray:
-        """The part of an array (ny, nx) at these places of the axis."""
-        return array[:, places] if self.is_x else array[places]
+    def _apply_even(self, values: np.ndarray, top: int, bottom: int, out: np.ndarray) -> None:
+        """As one long line, which runs on from row to row, over what the ends overwrite later."""
+        choice = self.rule.choices[0]
+        flat, target = values.ravel(), out.ravel()
+        start = max(top * self.nx, -choice.first * self.stride)
+        stop = min(bottom * self.nx, flat.size - choice.last * self.stride)
+        if stop > start:
+            parts = [flat[start + k * self.stride : stop + k * self.stride] for k in choice.offsets]
+            _antisymmetric_sum(parts, self._uniform(choice), target[start - top * self.nx :][: stop - start])
 
-    def _apply(self, choice: Choice, values: np.ndarray, slope: np.ndarray) -> None:
-        """The stencil's sum over values (ny, nx) into the slope, of no meaning where it does not fit."""
+    def _apply_uneven(self, values: np.ndarray, top: int, bottom: int, out: np.ndarray) -> None:
+        choice = self.rule.choices[0]
         low, high = self._span(choice)
-        weights = self._weights_at(choice, np.arange(low, high))
-        if not self.is_uniform:
-            shifted = [self._at(values, slice(low + k, high + k)) for k in choice.offsets]
-            columns = weights.T[:, None, :] if self.is_x else weights.T[:, :, None]
-            _weighted_sum(shifted, columns, self._at(slope, slice(low, high)))
+        if self.is_x:
+            weights = choice.weights(self.axis, np.arange(low, high)).T[:, None, :]
+            parts = [values[top:bottom, low + k : high + k] for k in choice.offsets]
+            _weighted_sum(parts, weights, out[:, low:high])
             return
-        # even spacing: as one long line, which runs on from row to row, over what the ends overwrite later
-        flat, target = values.ravel(), slope.ravel()
-        start, stop = -choice.first * self.stride, flat.size - choice.last * self.stride
-        for first in range(start, stop, _BLOCK_NODES):
-            last = min(first + _BLOCK_NODES, stop)
-            parts = [flat[first + k * self.stride : last + k * self.stride] for k in choice.offsets]
-            _antisymmetric_sum(parts, weights[0], target[first:last])
+        first, last = max(top, low), min(bottom, high)
+        if last > first:
+            weights = choice.weights(self.axis, np.arange(first, last)).T[:, :, None]
+            parts = [values[first + k : last + k] for k in choice.offsets]
+            _weighted_sum(parts, weights, out[first - top : last - top])
 
     def own_weights(self, choice: Choice) -> np.ndarray:
         """Weights (count, size) of a stencil at every place of the axis, 0 where it does not fit."""
@@ -143,14 +165,3 @@ def _weighted_sum(shifted, weights, out) -> None:
     for part, weight in zip(shifted[1:], weights[1:], strict=True):
         np.multiply(part, weight, out=spare)
         out += spare
-
-
-def _averaged_across(slope: np.ndarray, cross: np.ndarray, is_x: bool) -> np.ndarray:
-    """Average of each line's slope with its two neighbours'; NaN at the first and last line."""
-    lines = slope if is_x else slope.T
-    averaged = np.full(slope.shape, np.nan)
-    if cross.size > 2:
-        weights = across_weights(cross)
-        target = averaged if is_x else averaged.T
-        target[1:-1] = sum(lines[k : cross.size - 2 + k] * weights[:, k, None] for k in range(3))
-    return averaged

@@ -6,7 +6,7 @@ from functools import cached_property
 
 import numpy as np
 
-from fieldview.compute.derivatives import derivative
+from fieldview.compute.derivatives import combination
 from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field
 
@@ -30,8 +30,8 @@ class Local:
         self.field = field
         self.scheme = field.derivative if scheme is None else scheme
         self._centre = centre
-        self._fallback: set[int] | np.ndarray = np.zeros(0, np.intp)
-        self._along_lattice: dict[tuple[str, str], np.ndarray] = {}
+        self._fallback = np.zeros(0, np.intp)
+        self._kept: dict[str, np.ndarray] = {}
 
     @property
     def ux(self) -> np.ndarray:
@@ -51,9 +51,7 @@ class Local:
 
     def combined(self, first: str, sign: int, second: str) -> np.ndarray:
         """Sum or difference of two derivatives, a fresh array; the derivatives themselves are not kept."""
-        a, b = self._slope(first, keep=False), self._slope(second, keep=False)
-        target = None if any(a is kept for kept in self._along_lattice.values()) else a
-        return np.subtract(a, b, out=target) if sign < 0 else np.add(a, b, out=target)
+        return self._made({first: 1, second: sign})
 
     @property
     def fallback_count(self) -> int:
@@ -82,28 +80,27 @@ class Local:
         # a quarter turn must not leave round-off where nothing of the other axis belongs
         return np.where(np.abs(turned) < 1e-15, 0.0, turned)
 
-    def _slope(self, name: str, *, keep: bool = True) -> np.ndarray:
-        component, axis = DERIVATIVES[name]
-        parts = [
-            (factor, self._lattice_slope(component, along, keep))
-            for factor, along in zip(self.axes[axis], ("x", "y"), strict=True)
-            if factor != 0
-        ]
-        if len(parts) == 1 and parts[0][0] == 1:
-            return parts[0][1]
-        return sum(factor * slope for factor, slope in parts)
+    def _slope(self, name: str) -> np.ndarray:
+        if name not in self._kept:
+            self._kept[name] = self._made({name: 1})
+        return self._kept[name]
 
-    def _lattice_slope(self, component: str, along: str, keep: bool) -> np.ndarray:
-        key = (component, along)
-        if key in self._along_lattice:
-            return self._along_lattice[key]
+    def _made(self, factors: dict[str, int]) -> np.ndarray:
+        """Sum of derivatives along the plane's axes, times these factors."""
         self._check_plane()
-        values = getattr(self.field, component)
-        slope, fallback = derivative(values, self.field.grid, along, scheme=self.scheme)
+        shares: dict[tuple[str, str], float] = {}
+        for name, factor in factors.items():
+            component, axis = DERIVATIVES[name]
+            for share, along in zip(self.axes[axis], ("x", "y"), strict=True):
+                shares[component, along] = shares.get((component, along), 0.0) + factor * share
+        terms = [
+            (share, getattr(self.field, component), along)
+            for (component, along), share in shares.items()
+            if share != 0
+        ]
+        values, fallback = combination(terms, self.field.grid, scheme=self.scheme)
         self._fallback = np.concatenate([self._fallback, fallback])
-        if keep:
-            self._along_lattice[key] = slope
-        return slope
+        return values
 
     def _check_plane(self) -> None:
         if not self.field.grid.is_plane:

@@ -135,7 +135,7 @@ def _normalised(centre, middle, spread, floor: float, out: np.ndarray) -> np.nda
     if floor == 0.0:
         # without a floor an equal vector among equal ones is judged equal
         spread[out == 0] = 1.0
-    with np.errstate(divide="ignore", invalid="ignore"):
+    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         return np.divide(out, spread, out=out)
 
 

@@ -43,7 +43,7 @@ def stencil(grid: Grid, functional: str, scheme: str) -> Stencil:
         return Stencil(((0, 0),), (np.ones((1, 1)),))
     rule = scheme_named(scheme)
     choice = rule.choices[0]
-    line = Line(grid, functional)
+    line = Line(grid, functional, rule)
     along = [(step, weight) for step, weight in zip(choice.offsets, line.own_weights(choice), strict=True)]
     lanes = [(0, np.ones(1))]
     if rule.across:

@@ -11,7 +11,7 @@ from tests.compute.flows import lattice, vortex
 
 
 def stated_residual(values: np.ndarray, radius: int, floor: float) -> np.ndarray:
-    """Westerweel & Scarano (2005) eq. 2, read out loud: NaN where under three neighbours, or none to judge."""
+    """Westerweel & Scarano (2005) eq. 2 read out loud: NaN with under three neighbours, or none to judge."""
     residual = np.full(values.shape, np.nan)
     for iy, ix in np.argwhere(np.isfinite(values)):
         around = values[max(iy - radius, 0) : iy + radius + 1, max(ix - radius, 0) : ix + radius + 1].copy()
