@@ -9,6 +9,7 @@ import scipy.sparse as sp
 
 from fieldview.compute.covariance import row_variances
 from fieldview.compute.linear import LinearMap, MeanRemoval, SparseMap
+from fieldview.compute.penalised import PenalisedMap
 from fieldview.compute.stencil_covariance import coefficient
 
 
@@ -50,10 +51,12 @@ class Passage:
                 factor = -np.asarray(rows.sum(axis=1)).ravel()
                 if np.abs(factor).max(initial=0.0) > 1e-9 * np.abs(rows).max():
                     asides.append((factor, change.share))
-            elif isinstance(change, SparseMap):
+            elif isinstance(change, SparseMap) or isinstance(change, SparseMap | PenalisedMap):
                 rows = rows @ change.matrix
             else:
-                rows = rows @ change.matrix
+                used, compact = np.unique(rows.indices, return_inverse=True)
+                entries = (rows.data, compact.ravel(), rows.indptr)
+                rows = sp.csr_array(entries, shape=(rows.shape[0], used.size)) @ change.rows(used)
         if isinstance(rows, np.ndarray):
             variance = self._dense_variances(rows)
         else:

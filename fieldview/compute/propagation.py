@@ -17,9 +17,10 @@ import scipy.sparse as sp
 
 from fieldview.compute.derivatives import derivative_rows
 from fieldview.compute.field import Field
-from fieldview.compute.linear import MeanRemoval, SparseMap
+from fieldview.compute.linear import MeanRemoval
 from fieldview.compute.local import DERIVATIVES, Local
 from fieldview.compute.passage import Passage, changed_nodes
+from fieldview.compute.penalised import PenalisedMap
 from fieldview.compute.stencil_covariance import closed_sum, stencil
 
 _MOST_DENSE_NODES = 4096
@@ -63,7 +64,7 @@ def _unknown(field: Field, components: Iterable[str]) -> str:
         if field.error.sigma_of(name, field.grid.shape) is None:
             return f"no uncertainty of {name} is stated"
     for change in field.maps:
-        if not isinstance(change, SparseMap | MeanRemoval) and field.status.size > _MOST_DENSE_NODES:
+        if isinstance(change, PenalisedMap) and field.status.size > _MOST_DENSE_NODES:
             return (
                 f"the smoothing reaches over all {field.status.size:,} nodes; "
                 f"its uncertainty is followed on up to {_MOST_DENSE_NODES:,}"

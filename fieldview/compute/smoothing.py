@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 import scipy.sparse as sp
@@ -15,6 +17,76 @@ METHODS = ("gaussian", "savitzky_golay", "penalised")
 
 _GAUSSIAN_REACH = 4.0
 """Standard deviations after which the Gaussian's weights are cut off."""
+
+
+@dataclass(frozen=True, eq=False)
+class GaussianMap:
+    """Normalised convolution: Gaussian weights over valid nodes, divided by their sum.
+
+    Kept as the two filters that it is, since its matrix would be large; `rows` makes the part asked for.
+
+    Attributes
+    ----------
+    valid : bool ndarray (ny, nx)
+    width : float
+        Standard deviation. [nodes]
+    exact, note
+        As of every map.
+    """
+
+    valid: np.ndarray
+    width: float
+    exact: bool = True
+    note: str = ""
+
+    def forward(self, values):
+        """(n,) or (n, k) to the same shape."""
+        return self._filtered(values, before=self.valid, after=self._per_sum)
+
+    def transpose(self, weights):
+        """(n,) or (n, k) to the same shape."""
+        return self._filtered(weights, before=self._per_sum, after=self.valid)
+
+    def rows(self, nodes) -> sp.csr_array:
+        """Rows of the matrix at flat nodes: (len(nodes), n)."""
+        nodes = np.asarray(nodes)
+        (ny, nx), reach = self.valid.shape, self._reach
+        iy, ix = np.divmod(nodes, nx)
+        steps = np.arange(-reach, reach + 1)
+        jy, jx = iy[:, None, None] + steps[:, None], ix[:, None, None] + steps
+        inside = (jy >= 0) & (jy < ny) & (jx >= 0) & (jx < nx) & self.valid[iy, ix][:, None, None]
+        row, *place = np.nonzero(inside)
+        members = jy[row, place[0], 0] * nx + jx[row, 0, place[1]]
+        there = self.valid.ravel()[members]
+        row, members, place = row[there], members[there], [part[there] for part in place]
+        weights = self._weights[place[0]] * self._weights[place[1]] * self._per_sum.ravel()[nodes[row]]
+        return sp.csr_array((weights, (row, members)), shape=(nodes.size, self.valid.size))
+
+    @property
+    def _reach(self) -> int:
+        return int(np.ceil(_GAUSSIAN_REACH * self.width))
+
+    @cached_property
+    def _weights(self) -> np.ndarray:
+        return np.exp(-0.5 * (np.arange(-self._reach, self._reach + 1) / self.width) ** 2)
+
+    @cached_property
+    def _per_sum(self) -> np.ndarray:
+        """One over the sum of the weights at every valid node, 0 elsewhere."""
+        total = self._convolved(self.valid[:, :, None].astype(float))[:, :, 0]
+        return np.where(self.valid, 1 / np.maximum(total, 1e-300), 0.0)
+
+    def _filtered(self, values, *, before: np.ndarray, after: np.ndarray) -> np.ndarray:
+        values = np.asarray(values, float)
+        layers = values.reshape(*self.valid.shape, -1) * before[:, :, None]
+        return (self._convolved(layers) * after[:, :, None]).reshape(values.shape)
+
+    def _convolved(self, layers: np.ndarray) -> np.ndarray:
+        from scipy.ndimage import correlate1d
+
+        for axis in (0, 1):
+            layers = correlate1d(layers, self._weights, axis=axis, mode="constant")
+        return layers
 
 
 def smoothing_map(
@@ -64,26 +136,8 @@ def smoothing_map(
 
         return penalised_map(valid, width=width, values=values)
     if method == "gaussian":
-        return SparseMap(_gaussian(valid, 1.0 if width is None else width))
+        return GaussianMap(valid, 1.0 if width is None else float(width))
     return SparseMap(_savitzky_golay(grid, valid, 5 if width is None else width))
-
-
-def _gaussian(valid: np.ndarray, width: float) -> sp.csr_array:
-    ny, nx = valid.shape
-    plain = sp.kron(_band(ny, width), _band(nx, width), format="csr")
-    there = sp.diags_array(valid.ravel().astype(float))
-    weights = sp.csr_array(there @ plain @ there)
-    weights.eliminate_zeros()
-    total = weights.sum(axis=1)
-    return sp.csr_array(sp.diags_array(1 / np.where(total > 0, total, 1.0)) @ weights)
-
-
-def _band(size: int, width: float) -> sp.csr_array:
-    """Gaussian weights (size, size) between the nodes of one axis."""
-    reach = min(int(np.ceil(_GAUSSIAN_REACH * width)), size - 1)
-    offsets = np.arange(-reach, reach + 1)
-    weights = np.exp(-0.5 * (offsets / width) ** 2)
-    return sp.diags_array(list(weights), offsets=list(offsets), shape=(size, size), format="csr")
 
 
 def _savitzky_golay(grid: Grid, valid: np.ndarray, width: float) -> sp.csr_array:

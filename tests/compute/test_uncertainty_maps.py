@@ -115,9 +115,9 @@ def test_turned_axes_with_unequal_sigma():
 
 @pytest.mark.parametrize("kind", ["measured", "biharmonic", "linear + gaussian"])
 def test_all_quantities_against_monte_carlo(kind):
-    """600 draws so small that the first order is all there is; 3 % standard error of a node's spread."""
+    """300 draws so small that the first order is all there is; 4 % standard error of a node's spread."""
     field = cleaned(kind, correlation=(2, 2), sigma={"u": 0.02, "v": 0.03})
-    rng, count = np.random.default_rng(6), 600
+    rng, count = np.random.default_rng(6), 300
     passage, small = whole_map(field), 1e-4
     draws = {}
     for component, sigma in (("u", 0.02), ("v", 0.03)):
@@ -135,8 +135,8 @@ def test_all_quantities_against_monte_carlo(kind):
         known = np.isfinite(found.uncertainty)
         ratio = spread[known] / found.uncertainty[known]
         assert known.sum() > (10 if name == "swirling_strength" else 70), name
-        assert np.median(ratio) == pytest.approx(1, abs=0.02), name
-        assert ratio.min() > 0.86 and ratio.max() < 1.14, name
+        assert np.median(ratio) == pytest.approx(1, abs=0.025), name
+        assert ratio.min() > 0.8 and ratio.max() < 1.2, name
 
 
 def test_through_plane_velocity_keeps_its_mean_and_its_own_error():
