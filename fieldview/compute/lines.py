@@ -60,7 +60,7 @@ class Line:
 
     @cached_property
     def _end_stencils(self) -> list[tuple[int, int, np.ndarray]]:
-        """For each place at the ends the first node of its stencil and the weights; one NaN where none fits."""
+        """For each place at the ends the first node of its stencil and the weights: NaN where none fits."""
         found = []
         for place in self._ends:
             for choice in self.rule.choices[1:]:

@@ -25,6 +25,19 @@ def changed_nodes(maps: Sequence[LinearMap], shape: tuple[int, int]) -> np.ndarr
     return changed.reshape(shape)
 
 
+def _before(rows, change: LinearMap):
+    """Weights on the values before a map, of rows of weights on those after it; sparse or dense."""
+    if isinstance(change, MeanRemoval):
+        return rows
+    if isinstance(change, SparseMap | PenalisedMap):
+        return rows @ change.matrix
+    if isinstance(rows, np.ndarray):
+        return change.transpose(rows.T).T
+    used, compact = np.unique(rows.indices, return_inverse=True)
+    entries = (rows.data, compact.ravel(), rows.indptr)
+    return sp.csr_array(entries, shape=(rows.shape[0], used.size)) @ change.rows(used)
+
+
 class Passage:
     """The way from the measured values of one component to the cleaned ones.
 
@@ -51,12 +64,7 @@ class Passage:
                 factor = -np.asarray(rows.sum(axis=1)).ravel()
                 if np.abs(factor).max(initial=0.0) > 1e-9 * np.abs(rows).max():
                     asides.append((factor, change.share))
-            elif isinstance(change, SparseMap) or isinstance(change, SparseMap | PenalisedMap):
-                rows = rows @ change.matrix
-            else:
-                used, compact = np.unique(rows.indices, return_inverse=True)
-                entries = (rows.data, compact.ravel(), rows.indptr)
-                rows = sp.csr_array(entries, shape=(rows.shape[0], used.size)) @ change.rows(used)
+            rows = _before(rows, change)
         if isinstance(rows, np.ndarray):
             variance = self._dense_variances(rows)
         else:

@@ -67,6 +67,7 @@ KINDS = (
     "harmonic + mean + savitzky_golay",
     "penalised",
     "mean + linear + penalised + mean",
+    "gaussian + penalised",
 )
 NOISE_AT_NODES = np.random.default_rng(0).uniform(0.01, 0.03, SHAPE)
 
