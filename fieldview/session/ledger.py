@@ -172,7 +172,10 @@ def _range_test(field, line, step, around):
     absent = [name for name in given if name != "speed" and name not in field.components]
     if absent:
         raise InputError(f"ledger[{line}]: the run has no component {absent[0]}; remove its limits")
-    verdict = validation.range_test(**_measured_parts(field), limits=given)
+    # the limits are stated along the plane's axes, not the lattice's
+    measured = field.status == Status.MEASURED
+    parts = {name: np.where(measured, part, np.nan) for name, part in field.components.items()}
+    verdict = validation.range_test(**parts, limits=given)
     return _judged(field, line, step, verdict, None), ""
 
 
@@ -256,8 +259,9 @@ def _measured_parts(field: Field) -> dict[str, np.ndarray]:
 def _judged(field, line, step, verdict, limit) -> Field:
     event = Event(line, step.step, "rejected", verdict.rejected, verdict.residual, limit)
     after = field.reject(verdict.rejected, event)
-    if verdict.not_judged is not None and verdict.not_judged.any():
-        unjudged = Event(line, step.step, "not judged", verdict.not_judged)
+    not_judged = verdict.not_judged & (field.status == Status.MEASURED)
+    if not_judged.any():
+        unjudged = Event(line, step.step, "not judged", not_judged)
         after = after.with_(events=(*after.events, unjudged))
     return after
 
