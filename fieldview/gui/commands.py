@@ -9,6 +9,7 @@ from fieldview.gui.actions import Command, has_field, has_frames, has_selection,
 from fieldview.gui.panels.quantities import FIRST
 from fieldview.gui.picture import Picture
 from fieldview.gui.tools import TOOLS
+from fieldview.gui.units_shown import CHOICES
 
 
 def run_commands() -> tuple[Command, ...]:
@@ -125,6 +126,22 @@ def view_commands() -> tuple[Command, ...]:
     )  # fmt: skip
 
 
+def unit_commands() -> tuple[Command, ...]:
+    return tuple(
+        Command(
+            f"units.{choice}",
+            words.capitalize(),
+            "View",
+            lambda w, choice=choice: w.desk.show(units=choice),
+            enabled=has_session,
+            checked=lambda p, choice=choice: p.shown.units == choice,
+            group="Show numbers",
+            hint="Needs a reference length and velocity" if choice == "reference" else "",
+        )
+        for choice, words in CHOICES
+    )
+
+
 def measure_commands() -> tuple[Command, ...]:
     made = [
         Command(
@@ -155,6 +172,7 @@ def measure_commands() -> tuple[Command, ...]:
         Command("sheet.uncertainty", "Uncertainty …", "Measure", uncertainty, enabled=has_session,
                 separated=True),
         Command("sheet.calibration", "Calibration and axes …", "Measure", calibration, enabled=has_session),
+        Command("sheet.reference", "Reference values …", "Measure", reference, enabled=has_session),
     )  # fmt: skip
     return (*made, line, follow, *sheets)
 
@@ -179,6 +197,7 @@ def all_commands() -> tuple[Command, ...]:
         *run_commands(),
         *edit_commands(),
         *view_commands(),
+        *unit_commands(),
         *measure_commands(),
         *output_commands(),
         *help_commands(),
@@ -296,3 +315,9 @@ def calibration(window) -> None:
     from fieldview.gui.calibration_sheet import CalibrationSheet
 
     CalibrationSheet(window).show()
+
+
+def reference(window) -> None:
+    from fieldview.gui.reference_sheet import ReferenceSheet
+
+    ReferenceSheet(window).show()

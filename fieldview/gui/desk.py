@@ -308,7 +308,16 @@ def plain(error: ValidationError) -> str:
     return f"{place}: {message}" if place else message
 
 
-_KEPT = ("frame", "quantity", "iso_lines", "arrow_colour", "rejected_arrows", "coverage", "arrow_stretch")
+_KEPT = (
+    "frame",
+    "quantity",
+    "iso_lines",
+    "arrow_colour",
+    "rejected_arrows",
+    "coverage",
+    "arrow_stretch",
+    "units",
+)
 
 
 def view_from_shown(shown: Shown) -> dict:

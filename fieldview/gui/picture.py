@@ -13,6 +13,7 @@ import numpy as np
 
 from fieldview.compute.field import Field
 from fieldview.gui.jobs import Task
+from fieldview.gui.units_shown import UnitView, unit_view
 from fieldview.session.models import Session
 from fieldview.session.regions import Region
 from fieldview.session.undo import History
@@ -35,6 +36,8 @@ class Shown:
         Speed of the reference arrow, locked likewise. [velocity]
     coverage : float
         Factor k by which uncertainties are multiplied for showing.
+    units : "session", "mm" or "reference"
+        What numbers are shown in.
     """
 
     frame: int = 0
@@ -51,6 +54,7 @@ class Shown:
     levels: Mapping[str, tuple[float, float]] = attribute(default_factory=lambda: NOTHING)
     speed: float | None = None
     coverage: float = 1.0
+    units: str = "session"
     drawer: str = "growth"
 
 
@@ -250,6 +254,10 @@ class Picture:
         """The arrows' colour quantity, where it is of the field that is shown."""
         right = self.tint is not None and self.tint.of is self.field
         return self.tint if right and self.tint.name == self.shown.arrow_colour else None
+
+    @property
+    def unit_view(self) -> UnitView:
+        return unit_view(self.session, self.shown.units)
 
     @property
     def curve_now(self) -> Curve | None:

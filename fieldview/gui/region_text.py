@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 
 from fieldview.gui import wording
+from fieldview.gui.units_shown import UnitView
 
 
 @dataclass(frozen=True)
@@ -36,7 +37,7 @@ ENTRIES = (
 )
 
 
-TRACE_SYMBOLS = {"line": ("∫u·dl", "m²/s")}
+TRACE_SYMBOLS = {"line": "∫u·dl"}
 """What is followed over time where it is not Γ."""
 
 
@@ -65,7 +66,9 @@ def figure(row: Mapping, key: tuple[str, ...]) -> Figure | None:
     return None
 
 
-def label_lines(row: Mapping, *, coverage: float, full: bool) -> tuple[tuple[str, bool], ...]:
+def label_lines(
+    row: Mapping, *, coverage: float, full: bool, view: UnitView = UnitView()
+) -> tuple[tuple[str, bool], ...]:
     """Lines for the label beside a region, each with whether it is mere noise."""
     wanted = [("circulation",), ("line_integral",), ("through_flow",)]
     if full:
@@ -76,11 +79,17 @@ def label_lines(row: Mapping, *, coverage: float, full: bool) -> tuple[tuple[str
         if found is None:
             continue
         spread = None if found.uncertainty is None else coverage * found.uncertainty
-        text = wording.plus_minus(found.value, spread, found.unit, signed=entry.signed)
+        factor, unit = view.of(found.unit)
+        text = wording.plus_minus(*scaled(factor, found.value, spread), unit, signed=entry.signed)
         lines.append((f"{entry.symbol}  {text}", wording.is_noise(found.value, spread)))
     if not lines and row.get("warnings"):
         lines.append((shortened(row["warnings"][0]), True))
     return tuple(lines)
+
+
+def scaled(factor: float, *numbers: float | None) -> tuple[float | None, ...]:
+    """The numbers times a factor; what is not there stays so."""
+    return tuple(None if n is None else factor * n for n in numbers)
 
 
 def shortened(sentence: str, most: int = 60) -> str:

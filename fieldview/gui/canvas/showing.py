@@ -16,6 +16,7 @@ from fieldview.gui.canvas.view import Canvas, level_indices
 from fieldview.gui.picture import MapOf, Picture
 from fieldview.gui.region_text import label_lines
 from fieldview.gui.theme import LIGHT, Theme
+from fieldview.gui.units_shown import UnitView
 
 _MARK_WORDS = (
     (Status.MEASURED, "measured"),
@@ -46,6 +47,10 @@ class Showing:
     def draw(self, picture: Picture) -> None:
         self._picture = picture
         canvas, shown = self._canvas, picture.shown
+        if self._new("units", picture.unit_view):
+            for part in ("map", "flow", "regions"):
+                self._seen.pop(part, None)
+            self._label_axes(picture)
         if self._new("field", picture.field):
             canvas.set_extent(picture.field)
             self._marks = marks_of(picture.field)
@@ -94,13 +99,16 @@ class Showing:
             return
         colours = themes.colour_table(self._theme, shown.kind)
         canvas.map_layer.show(map_image(shown.values, field.grid, colours, *levels), field, self._theme)
-        label = wording.with_unit(f"{shown.title} {shown.symbol}", shown.unit)
+        factor, _ = self._picture.unit_view.of(shown.unit)
+        label = self._picture.unit_view.label(f"{shown.title} {shown.symbol}", shown.unit)
         beyond = (
             bool(np.nanmin(shown.values, initial=np.inf) < levels[0]),
             bool(np.nanmax(shown.values, initial=-np.inf) > levels[1]),
         )
         signed = shown.kind == "signed"
-        canvas.colour_bar.show_bar(Bar(colours, *levels, label, *beyond, signed), self._theme)
+        canvas.colour_bar.show_bar(
+            Bar(colours, factor * levels[0], factor * levels[1], label, *beyond, signed), self._theme
+        )
 
     def _lens_changed(self) -> None:
         # the thinning and the arrows' length on the screen follow the zoom
@@ -121,23 +129,27 @@ class Showing:
         if tint is not None and tint.name in shown.levels:
             colours = level_indices(tint.values, *shown.levels[tint.name])
         canvas.flow_layer.show(Flow(field, self._theme, scale, colours, shown.rejected_arrows))
-        speed = (
-            f"{wording.short(shown.speed)} {wording.unit_text(field.units.velocity)}" if shown.speed else ""
-        )
+        factor, unit = picture.unit_view.of(field.units.velocity)
+        speed = f"{wording.short(factor * shown.speed)} {unit or 'U'}" if shown.speed else ""
         thin = thinning(field, lens).sentence if field.in_plane else "no arrows: the field has only w"
         pixels = scale.pixels if field.in_plane and shown.speed else 0.0
         canvas.legend.show_key(Key(speed if pixels else "", pixels, thin, self._marks), self._theme)
 
     def _label_axes(self, picture: Picture) -> None:
         if picture.field is not None:
-            length = picture.field.units.length
-            self._canvas.set_axis_labels(f"x [{length}]", f"y [{length}]")
+            factor, length = picture.unit_view.of(picture.field.units.length)
+            x, y = (f"{name} [{length}]" if length else f"{name} / L" for name in "xy")
+            self._canvas.set_axis_labels(x, y, factor)
 
     def _marked(self, place: int, region, measured) -> Marked:
         shown = self._picture.shown
         live = region is self._picture.draft
         chosen = live or region.name == shown.selected
-        lines = label_lines(measured.row, coverage=shown.coverage, full=chosen) if measured else ()
+        lines = (
+            label_lines(measured.row, coverage=shown.coverage, full=chosen, view=self._picture.unit_view)
+            if measured
+            else ()
+        )
         stale = self._picture.stale
         return Marked(
             region,
@@ -159,4 +171,4 @@ def marks_of(field) -> tuple[tuple[str, str], ...]:
 def _same(a, b) -> bool:
     if isinstance(a, tuple) and isinstance(b, tuple):
         return len(a) == len(b) and all(x is y or _same(x, y) for x, y in zip(a, b, strict=True))
-    return isinstance(a, int | float | str | bool) and type(a) is type(b) and a == b
+    return isinstance(a, int | float | str | bool | UnitView) and type(a) is type(b) and a == b

@@ -12,8 +12,9 @@ from fieldview.gui import wording
 from fieldview.gui.panels.base import label
 from fieldview.gui.panels.tables import RAW, Cell, CellModel, dense
 from fieldview.gui.picture import Picture
-from fieldview.gui.region_text import ENTRIES
+from fieldview.gui.region_text import ENTRIES, scaled
 from fieldview.gui.theme import LIGHT, Theme
+from fieldview.gui.units_shown import UnitView
 
 PART_WORDS = {
     "random": "scatter of the vectors",
@@ -53,14 +54,16 @@ class Budget(QWidget):
         self.view.horizontalHeader().setStretchLastSection(True)
         column.addWidget(self.view)
         self._row: dict = {}
+        self._view = UnitView()
         self._coverage = 1.0
 
     def draw(self, picture: Picture) -> None:
         region = picture.selected
         measured = picture.measured_of(region) if region is not None else None
         row = measured.row if measured is not None else {}
-        if row is self._row and picture.shown.coverage == self._coverage:
+        if row is self._row and (picture.shown.coverage, picture.unit_view) == (self._coverage, self._view):
             return
+        self._view = picture.unit_view
         self._row, self._coverage = row, picture.shown.coverage
         names = [name for name, parts in (row.get("budget") or {}).items() if parts]
         if names != [self.number.itemData(i) for i in range(self.number.count())]:
@@ -75,17 +78,20 @@ class Budget(QWidget):
         parts = (self._row.get("budget") or {}).get(name, [])
         number = self._row.get(name) or {}
         titles = ("part", f"± U, k = {self._coverage:g}", "share of U²")
-        self.model.put(titles, tuple(budget_rows(parts, self._coverage)))
+        self.model.put(
+            titles, tuple(budget_rows(parts, self._coverage, self._view.of(number.get("unit", "1"))[0]))
+        )
         combined = (number.get("uncertainty") or {}).get("combined")
         spread = None if combined is None else self._coverage * combined
+        factor, unit = self._view.of(number.get("unit", "1"))
         self.said.setText(
-            wording.plus_minus(number.get("value"), spread, number.get("unit", "1"), signed=True)
+            wording.plus_minus(*scaled(factor, number.get("value"), spread), unit, signed=True)
             if number
             else "Choose a region."
         )
 
 
-def budget_rows(parts, coverage: float) -> list[tuple[Cell, ...]]:
+def budget_rows(parts, coverage: float, factor: float = 1.0) -> list[tuple[Cell, ...]]:
     """A row for every contribution, largest first; one that is not known says so."""
     known = [p for p in parts if p["uncertainty"] is not None]
     total = math.fsum(p["uncertainty"] ** 2 for p in known)
@@ -94,7 +100,7 @@ def budget_rows(parts, coverage: float) -> list[tuple[Cell, ...]]:
         u = part["uncertainty"]
         name = PART_WORDS.get(part["part"], part["part"].replace("_", " "))
         tip = f"sensitivity {wording.short(part['sensitivity'])}" if part["sensitivity"] is not None else ""
-        text = "not stated" if u is None else wording.fixed(coverage * u, wording.decimals_for(coverage * u))
+        text = "not stated" if u is None else _two_digits(factor * coverage * u)
         share = None if u is None or total == 0 else u * u / total
         rows.append(
             (
@@ -104,6 +110,10 @@ def budget_rows(parts, coverage: float) -> list[tuple[Cell, ...]]:
             )
         )
     return rows
+
+
+def _two_digits(u: float) -> str:
+    return wording.fixed(u, wording.decimals_for(u))
 
 
 class _Bar(QStyledItemDelegate):

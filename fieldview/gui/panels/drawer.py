@@ -6,8 +6,8 @@ import numpy as np
 from PySide6.QtCore import Qt
 from PySide6.QtWidgets import QStackedWidget, QTabBar, QVBoxLayout, QWidget
 
+from fieldview.compute.units import METRIC, Units
 from fieldview.gui import theme as themes
-from fieldview.gui import wording
 from fieldview.gui.panels.base import label
 from fieldview.gui.panels.budget import Budget
 from fieldview.gui.panels.plots import Plot
@@ -72,7 +72,17 @@ class Drawer(QWidget):
         name, region = picture.shown.drawer, picture.selected
         curve = picture.curve_now
         shown = picture.shown
-        seen = (name, region, curve, picture.session, picture.traces, shown.coverage, shown.frame, self.theme)
+        seen = (
+            name,
+            region,
+            curve,
+            picture.session,
+            picture.traces,
+            shown.coverage,
+            shown.frame,
+            shown.units,
+            self.theme,
+        )
         if name == "budget":
             self.budget.draw(picture)
             self.said.setText("")
@@ -111,36 +121,43 @@ def _draw_profile(plot: Plot, picture: Picture, colour: str) -> str:
 
 
 def _along_axes(plot: Plot, picture: Picture) -> None:
-    units = picture.field.units if picture.field is not None else None
-    length, speed = (units.length, wording.unit_text(units.velocity)) if units else ("m", "m/s")
-    plot.start(f"arc length [{length}]", f"velocity [{speed}]")
+    view, units = picture.unit_view, _units(picture)
+    plot.start(view.label("arc length", units.length), view.label("velocity", units.velocity))
 
 
 def _draw_components(plot: Plot, picture: Picture, curve, colour: str, words) -> str:
     if curve is None:
         return "working …"
-    k = picture.shown.coverage
-    spread = [None if u is None else k * np.asarray(u) for u in (curve.u_first, curve.u_second)]
-    plot.add_line(curve.x, curve.first, colour, spread=spread[0])
-    plot.add_line(curve.x, curve.second, plot.theme.muted, spread=spread[1], dash=(4, 3))
+    units, view = _units(picture), picture.unit_view
+    _two_lines(plot, picture, colour, view.of(units.length)[0], view.of(units.velocity)[0])
     return f"solid: {words[0]} · dashed: {words[1]}"
+
+
+def _two_lines(plot: Plot, picture: Picture, colour: str, x_factor: float, factor: float) -> None:
+    """The curve's first quantity solid, its second dashed, each with its band of ± U."""
+    curve, k = picture.curve_now, picture.shown.coverage
+    spread = [None if u is None else k * factor * np.asarray(u) for u in (curve.u_first, curve.u_second)]
+    x = x_factor * curve.x
+    plot.add_line(x, factor * curve.first, colour, spread=spread[0])
+    plot.add_line(x, factor * curve.second, plot.theme.muted, spread=spread[1], dash=(4, 3))
+
+
+def _units(picture: Picture) -> Units:
+    return picture.field.units if picture.field is not None else METRIC
 
 
 def _draw_growth(plot: Plot, picture: Picture, colour: str) -> str:
     """Γ and Φ as the contour is scaled about its centroid."""
     region, curve = picture.selected, picture.curve_now
-    unit = wording.unit_text(picture.field.units.circulation) if picture.field is not None else "m²/s"
-    plot.start("scale of the contour", f"Γ, Φ [{unit}]")
+    unit = _units(picture).circulation
+    plot.start("scale of the contour", picture.unit_view.label("Γ, Φ", unit))
     if region is None:
         return "Choose a region."
     if region.shape == "line":
         return "A line encloses nothing that could grow."
     if curve is None:
         return "working …"
-    k = picture.shown.coverage
-    spread = [None if u is None else k * np.asarray(u) for u in (curve.u_first, curve.u_second)]
-    plot.add_line(curve.x, curve.first, colour, spread=spread[0])
-    plot.add_line(curve.x, curve.second, plot.theme.muted, spread=spread[1], dash=(4, 3))
+    _two_lines(plot, picture, colour, 1.0, picture.unit_view.of(unit)[0])
     plot.add_mark(1.0, "drawn")
     return "solid: Γ · dashed: Φ · a plateau of Γ means that the vortex is inside"
 
@@ -149,10 +166,9 @@ def _draw_over_time(plot: Plot, picture: Picture, colour: str) -> str:
     """The chosen region's number on every frame measured so far."""
     region = picture.selected
     known = picture.run is not None and any(t is not None for t in picture.run.times)
-    symbol, unit = TRACE_SYMBOLS.get(region.shape if region else "", ("Γ", "m²/s"))
-    if picture.field is not None:
-        unit = wording.unit_text(picture.field.units.circulation)
-    plot.start("time [s]" if known else "frame", f"{symbol} [{unit}]")
+    symbol = TRACE_SYMBOLS.get(region.shape if region else "", "Γ")
+    unit = _units(picture).circulation
+    plot.start("time [s]" if known else "frame", picture.unit_view.label(symbol, unit))
     if region is None:
         return "Choose a region."
     points = trace_of(picture, region.name)
@@ -160,9 +176,9 @@ def _draw_over_time(plot: Plot, picture: Picture, colour: str) -> str:
         return "Press Follow over run to measure every frame."
     frames = [frame for frame, _, _ in points]
     x = [picture.run.times[f] for f in frames] if known else [f + 1 for f in frames]
-    k = picture.shown.coverage
-    spread = np.array([np.nan if u is None else k * u for _, _, u in points])
-    plot.add_line(x, [value for _, value, _ in points], colour, spread=spread)
+    factor, k = picture.unit_view.of(unit)[0], picture.shown.coverage
+    spread = np.array([np.nan if u is None else factor * k * u for _, _, u in points])
+    plot.add_line(x, [factor * value for _, value, _ in points], colour, spread=spread)
     if picture.shown.frame in frames:
         plot.add_mark(x[frames.index(picture.shown.frame)], "shown")
     return f"{len(points)} of {picture.run.frames} frames"

@@ -15,6 +15,7 @@ from fieldview.gui.panels.base import Panel, label
 from fieldview.gui.picture import Card, Picture
 from fieldview.gui.pursuit import levels_of_values
 from fieldview.gui.theme import Theme
+from fieldview.gui.units_shown import UnitView
 
 FIRST = ("speed", "vorticity", "divergence")
 SCHEME_WORDS = {
@@ -118,7 +119,7 @@ class CardPainter(QStyledItemDelegate):
         painter.drawText(line, left, card.symbol)
         taken = painter.fontMetrics().horizontalAdvance(card.symbol) + 6
         painter.setFont(themes.font())
-        unit = wording.unit_text(card.unit)
+        factor, unit = self._panel.unit_view.of(card.unit)
         room = line.adjusted(taken, 0, 0, 0)
         unit_width = painter.fontMetrics().horizontalAdvance(unit) + 6
         title = painter.fontMetrics().elidedText(
@@ -131,7 +132,7 @@ class CardPainter(QStyledItemDelegate):
         line.translate(0, 17)
         painter.setFont(themes.font())
         painter.setPen(QColor(theme.muted if stale else theme.text))
-        painter.drawText(line, left, range_text(card))
+        painter.drawText(line, left, range_text(card, factor))
         line.translate(0, 16)
         painter.setFont(themes.font(pixels=themes.SMALL_PIXELS))
         painter.setPen(QColor(theme.muted))
@@ -141,7 +142,7 @@ class CardPainter(QStyledItemDelegate):
 class Quantities(Panel):
     def __init__(self, desk, parent=None):
         super().__init__(desk, "quantities", "Quantities", parent)
-        self.shown_name, self.field = "", None
+        self.shown_name, self.field, self.unit_view = "", None, UnitView()
         self.scheme = QComboBox()
         self.scheme.setAccessibleName("Derivative scheme")
         for name, words in SCHEME_WORDS.items():
@@ -190,8 +191,9 @@ class Quantities(Panel):
 
     def draw(self, picture: Picture) -> None:
         shown = picture.shown
-        redraw = (shown.quantity, picture.field) != (self.shown_name, self.field)
-        self.shown_name, self.field = shown.quantity, picture.field
+        wanted = (shown.quantity, picture.field, picture.unit_view)
+        redraw = wanted != (self.shown_name, self.field, self.unit_view)
+        self.shown_name, self.field, self.unit_view = wanted
         self.model.put(in_order(picture.cards))
         self.iso.setChecked(shown.iso_lines is not None)
         self.tint.setChecked(shown.arrow_colour is not None)
@@ -232,11 +234,12 @@ def _gain(scheme: str, correlation: tuple[float, float]) -> float:
     return noise_gain(scheme, correlation=correlation)
 
 
-def range_text(card: Card) -> str:
+def range_text(card: Card, factor: float = 1.0) -> str:
+    """``−38.7 … +39.2``, times a factor for the units shown."""
     if card.low is None:
         return "no values"
-    signed = card.kind != "unsigned"
-    return f"{wording.short(card.low, signed=signed)} … {wording.short(card.high, signed=signed)}"
+    low, high = (wording.short(factor * end, signed=card.kind != "unsigned") for end in (card.low, card.high))
+    return f"{low} … {high}"
 
 
 def times_text(card: Card) -> str:

@@ -14,6 +14,7 @@ from fieldview.gui import wording
 from fieldview.gui.panels.base import Panel, label
 from fieldview.gui.panels.tables import Cell, CellModel, dense
 from fieldview.gui.picture import Picture
+from fieldview.gui.region_text import scaled
 
 _STATUS_WORDS = {
     Status.MEASURED: "measured",
@@ -43,7 +44,8 @@ class Readout(Panel):
         self._drawn: tuple | None = None
 
     def draw(self, picture: Picture) -> None:
-        wanted = (picture.cursor, picture.field, picture.map, picture.shown.coverage, picture.stale)
+        shown = picture.shown
+        wanted = (picture.cursor, picture.field, picture.map, shown.coverage, shown.units, picture.stale)
         if self._drawn is not None and all(a is b for a, b in zip(wanted, self._drawn, strict=True)):
             return
         self._drawn = wanted
@@ -82,9 +84,10 @@ def node_near(field: Field | None, at: complex | None) -> tuple[int, int] | None
 def readings(picture: Picture, iy: int, ix: int) -> list[tuple[str, str]]:
     """Name and value of what is known at a node, as text."""
     field, k = picture.field, picture.shown.coverage
-    length, speed = field.units.length, wording.unit_text(field.units.velocity)
-    z = complex(field.grid.nodes[iy, ix])
-    decimals = wording.decimals_for(None, field.grid.spacing[0], digits=3)
+    view = picture.unit_view
+    (far, length), (fast, speed) = view.of(field.units.length), view.of(field.units.velocity)
+    z = far * complex(field.grid.nodes[iy, ix])
+    decimals = wording.decimals_for(None, far * field.grid.spacing[0], digits=3)
     rows = [
         ("node", f"row {iy}, col. {ix}"),
         ("x, y", f"{wording.fixed(z.real, decimals)}, {wording.fixed(z.imag, decimals)} {length}"),
@@ -94,16 +97,17 @@ def readings(picture: Picture, iy: int, ix: int) -> list[tuple[str, str]]:
         spread = None if sigma is None else k * float(sigma[iy, ix])
         if field.status[iy, ix] != Status.MEASURED:
             spread = None
-        rows.append((name, _value(values[iy, ix], spread, speed)))
+        rows.append((name, _value(*scaled(fast, values[iy, ix], spread), speed)))
     if field.in_plane and math.isfinite(field.u[iy, ix]):
         velocity = complex(field.u[iy, ix], field.v[iy, ix])
-        rows.append(("magnitude", f"{wording.short(abs(velocity), digits=4)} {speed}"))
+        rows.append(("magnitude", f"{wording.short(fast * abs(velocity), digits=4)} {speed}"))
         angle = wording.fixed(math.degrees(cmath.phase(velocity)), 1)
         rows.append(("angle", f"{angle}°"))
     shown = picture.map
     if shown is not None and shown.of is field and shown.name not in ("u", "v", "w", "speed", "direction"):
         spread = None if shown.uncertainty is None else k * float(shown.uncertainty[iy, ix])
-        rows.append((shown.symbol, _value(shown.values[iy, ix], spread, wording.unit_text(shown.unit))))
+        factor, unit = view.of(shown.unit)
+        rows.append((shown.symbol, _value(*scaled(factor, shown.values[iy, ix], spread), unit)))
     rows.extend(
         (name, f"{wording.short(values[iy, ix], digits=4)} {field.channel_units.get(name, '')}".strip())
         for name, values in field.channels.items()

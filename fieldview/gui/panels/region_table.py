@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from fieldview.gui import wording
 from fieldview.gui.panels.tables import Cell
 from fieldview.gui.picture import Picture
-from fieldview.gui.region_text import ENTRIES, Entry, figure
+from fieldview.gui.region_text import ENTRIES, Entry, figure, scaled
 
 _BY_KEY = {entry.key: entry for entry in ENTRIES}
 
@@ -77,6 +77,7 @@ def _add(titles, tips, filled, column: Column, rows, picture: Picture) -> None:
     """A column of values and, where the number has one, a column of its uncertainty."""
     found = [column.found(row) for row in rows]
     unit = next(number.unit for _, number in found if number is not None)
+    factor, _ = picture.unit_view.of(unit)
     main = column.entries[0]
     spread = main.spread and any(n is not None and n.uncertainty is not None for _, n in found)
     values, spreads = [], []
@@ -84,14 +85,14 @@ def _add(titles, tips, filled, column: Column, rows, picture: Picture) -> None:
     for entry, number in found:
         expanded = None if number is None or number.uncertainty is None else k * number.uncertainty
         value = None if number is None else number.value
-        text, u_text = wording.pair(value, expanded, signed=entry.signed)
+        text, u_text = wording.pair(*scaled(factor, value, expanded), signed=entry.signed)
         if number is None:
             text = u_text = ""
         muted = wording.is_noise(value, expanded) or picture.stale
         prefix = f"{entry.symbol} " if entry is not main and text else ""
         values.append((text, prefix, value, muted, entry.title))
         spreads.append((u_text if number is not None else "", expanded, muted))
-    titles.append(wording.with_unit(main.symbol, unit))
+    titles.append(picture.unit_view.label(main.symbol, unit))
     tips.append(main.title)
     texts = wording.aligned([text for text, *_ in values])
     for line, text, (_, prefix, value, muted, title) in zip(filled, texts, values, strict=True):

@@ -71,7 +71,8 @@ class Regions(Panel):
     def draw(self, picture: Picture) -> None:
         self.model.muted = QColor(self.theme.muted)
         measured = [picture.measured_of(region) for region in picture.regions]
-        seen = (*picture.regions, *measured, picture.shown.coverage, picture.stale, self.theme)
+        seen = (*picture.regions, *measured, picture.shown.coverage, picture.shown.units)
+        seen = (*seen, picture.session.reference if picture.session else None, picture.stale, self.theme)
         if len(seen) != len(self._seen) or any(a is not b for a, b in zip(seen, self._seen, strict=True)):
             self._seen = seen
             self.model.put(*table(picture))
