@@ -249,6 +249,9 @@ class Desk(QObject):
                 follow()
         elif answer.kind == "export":
             self.tell(f"{answer.value.name} was written to {answer.value.parent}.")
+        elif answer.kind == "digests":
+            if answer.value:
+                self.tell(f"{'; '.join(answer.value)}. The numbers are of the files as they are now.")
         elif answer.value is not None:
             self._pursuit.answered(answer)
 
@@ -260,6 +263,8 @@ class Desk(QObject):
         picture = self.picture.showing(frame=frame)
         notice = Notice(opened.facts.notes[0], grave=False) if opened.facts.notes else None
         self._put(picture.with_(history=History(session), saved=saved, run=opened.facts, notice=notice))
+        if session.run.digests:
+            self.jobs.submit("digests", work.changed_sources, opened.bench, lane="digests", urgency=LATER)
 
     def _failed(self, answer: Answer) -> None:
         if answer.kind == "open":

@@ -37,6 +37,8 @@ QLabel[role="history"] {{ color: {filled}; font-size: {small}px; }}
 QLabel[role="title"] {{ font-size: 20px; font-weight: bold; }}
 QWidget[role="panel"], QScrollArea[role="panel"] {{ background: {panel}; }}
 QWidget[role="paper"] {{ background: {canvas}; }}
+QFrame[role="mark"] {{ background: {accent}; border: none; }}
+QLabel[role="mark"] {{ color: {accent}; font-size: {small}px; }}
 QFrame[role="rule"] {{ background: {hairline}; border: none; }}
 QFrame[role="banner"] {{
     background: {panel}; border: 1px solid {attention}; border-left: 4px solid {attention};

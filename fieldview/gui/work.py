@@ -233,6 +233,11 @@ def save(session: Session, bench: Any, path: Path, view: dict) -> Path:
     return path
 
 
+def changed_sources(bench: Any) -> tuple[str, ...]:
+    """A sentence for every source file that is not what it was when the session was saved."""
+    return tuple(bench.changed_sources())
+
+
 def export_field(field: Field, path: Path, names) -> Path:
     """Write the cleaned field with these quantities; the ending of the name chooses the format."""
     from fieldview.compute.quantities import quantity_map

@@ -93,6 +93,19 @@ def test_a_bad_file_leaves_what_was_open(window, tmp_path, qtbot):
     assert "gone.session.json" in window.banner.text.text()
 
 
+def test_a_source_that_changed_on_disk_is_said_not_refused(open_window, session_file, qtbot):
+    from tests.gui.conftest import action
+
+    window = open_window(session_file)
+    action(window, "session.save").trigger()
+    settle(qtbot, window)
+    source = session_file.parent / "run" / "f2.csv"
+    source.write_text(source.read_text().replace("0.1", "0.2", 1))
+    again = open_window(session_file)
+    assert "f2.csv has changed since the session was saved" in again.banner.text.text()
+    assert again.desk.picture.field is not None
+
+
 def test_what_was_open_is_remembered(open_window, session_file, window):
     from fieldview.gui import places
 

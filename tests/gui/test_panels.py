@@ -71,11 +71,35 @@ def test_the_as_of_mark_shows_the_field_before_later_lines(window, qtbot):
     ledger_edits.as_of(window.desk, 0)
     settle(qtbot, window)
     assert window.desk.picture.field.count(Status.REJECTED) >= 1
-    assert window.ledger.lines[0].mark.isVisible()
     assert "as-of" in window.ledger.lines[1].outcome.text()
     ledger_edits.as_of(window.desk, 0)
     settle(qtbot, window)
     assert window.desk.picture.field.count(Status.REJECTED) == 0
+
+
+def test_the_mark_is_pulled_and_lines_are_dragged(window, qtbot):
+    from PySide6.QtCore import QPoint
+    from PySide6.QtWidgets import QApplication
+
+    mark, lines = window.ledger.mark, window.ledger.lines
+    up = mark.mapFromGlobal(lines[1].mapToGlobal(QPoint(10, 2)))
+    QTest.mousePress(mark, Qt.MouseButton.LeftButton, pos=QPoint(10, 4))
+    QTest.mouseRelease(mark, Qt.MouseButton.LeftButton, pos=up)
+    assert window.desk.picture.shown.as_of == 1
+    QTest.keyClick(mark, Qt.Key.Key_Down)
+    assert window.desk.picture.shown.as_of is None
+    settle(qtbot, window)
+    QApplication.processEvents()
+    first = window.session
+    grip = QPoint(60, 8)
+    below = lines[0].mapFromGlobal(lines[1].mapToGlobal(lines[1].rect().bottomLeft()))
+    QTest.mousePress(lines[0], Qt.MouseButton.LeftButton, pos=grip)
+    QTest.mouseRelease(lines[0], Qt.MouseButton.LeftButton, pos=below)
+    assert [type(s) for s in window.session.ledger] == [Fill, MedianTest]
+    assert action(window, "edit.undo").text() == "Undo move median test"
+    action(window, "edit.undo").trigger()
+    assert window.session == first
+    settle(qtbot, window)
 
 
 def test_cards_show_the_range_of_the_very_quantity(window, qtbot):

@@ -2,8 +2,7 @@
 
 from __future__ import annotations
 
-from PySide6.QtCore import QMimeData, QPoint, Qt
-from PySide6.QtGui import QDrag
+from PySide6.QtCore import QPoint, Qt
 from PySide6.QtWidgets import (
     QAbstractButton,
     QCheckBox,
@@ -25,7 +24,7 @@ from fieldview.gui.panels.base import Panel, label, set_property
 from fieldview.gui.panels.switch import Switch
 from fieldview.gui.picture import Picture
 
-LINE_MIME = "application/x-loopflux-ledger-line"
+DRAG_PIXELS = 12
 
 
 class Ledger(Panel):
@@ -58,6 +57,8 @@ class Ledger(Panel):
         self._run_line = RunLine()
         self._stack.insertWidget(0, self._run_line)
         self.lines: list[LedgerLine] = []
+        self.mark = AsOfMark(self)
+        self._stack.insertWidget(1, self.mark)
 
     def _menu(self) -> QMenu:
         menu = QMenu(self)
@@ -84,6 +85,66 @@ class Ledger(Panel):
             line.deleteLater()
         for line in self.lines:
             line.draw(picture)
+        self._place_mark(picture)
+
+    def _place_mark(self, picture: Picture) -> None:
+        """The mark stands below the last line that is applied."""
+        count = len(self.lines) if picture.shown.as_of is None else picture.shown.as_of
+        self.mark.setVisible(bool(self.lines))
+        if self._stack.indexOf(self.mark) != 1 + count:
+            self._stack.removeWidget(self.mark)
+            self._stack.insertWidget(1 + count, self.mark)
+
+    def line_at(self, y: int) -> int:
+        """Index of the line at a height of the page: before the first 0, beyond the last their number."""
+        middles = [line.geometry().center().y() for line in self.lines]
+        return sum(y > middle for middle in middles)
+
+    def page_y(self, widget: QWidget, event) -> int:
+        """Height on the page of a pointer event in one of its widgets."""
+        return widget.mapTo(self._page, event.position().toPoint()).y()
+
+
+class AsOfMark(QFrame):
+    """Where the shown field stands in the ledger: pull it up to see the field before later lines."""
+
+    def __init__(self, ledger: Ledger):
+        super().__init__()
+        self._ledger = ledger
+        self.setObjectName("as_of_mark")
+        self.setAccessibleName("As-of mark")
+        self.setToolTip("The field is shown as of this line. Drag the mark, or press Up and Down.")
+        self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
+        self.setCursor(Qt.CursorShape.SizeVerCursor)
+        column = QVBoxLayout(self)
+        column.setContentsMargins(0, 0, 0, 2)
+        column.setSpacing(0)
+        line = QFrame()
+        line.setProperty("role", "mark")
+        line.setFixedHeight(2)
+        column.addWidget(line)
+        words = label("as of here", "mark")
+        words.setAlignment(Qt.AlignmentFlag.AlignRight)
+        column.addWidget(words)
+
+    def _pull(self, count: int) -> None:
+        lines = len(self._ledger.lines)
+        count = min(max(count, 0), lines)
+        self._ledger.desk.show(as_of=None if count == lines else count)
+
+    def mousePressEvent(self, event):
+        event.accept()
+
+    def mouseReleaseEvent(self, event):
+        self._pull(self._ledger.line_at(self._ledger.page_y(self, event)))
+
+    def keyPressEvent(self, event):
+        shown = self._ledger.desk.picture.shown.as_of
+        count = len(self._ledger.lines) if shown is None else shown
+        if event.key() in (Qt.Key.Key_Up, Qt.Key.Key_Down):
+            self._pull(count + (1 if event.key() == Qt.Key.Key_Down else -1))
+        else:
+            super().keyPressEvent(event)
 
 
 class RunLine(QFrame):
@@ -127,12 +188,11 @@ class RunLine(QFrame):
 class LedgerLine(QFrame):
     """One step: switch, number, sentence, what it did; chosen, its settings below."""
 
-    def __init__(self, desk, number: int, parent=None):
-        super().__init__(parent)
-        self._desk, self.number = desk, number
+    def __init__(self, desk, number: int, ledger: Ledger):
+        super().__init__(ledger)
+        self._desk, self._ledger, self.number = desk, ledger, number
         self.setProperty("role", "ledger line")
         self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
-        self.setAcceptDrops(True)
         self._pressed: QPoint | None = None
         self._seen: tuple | None = None
         grid = QGridLayout(self)
@@ -157,10 +217,6 @@ class LedgerLine(QFrame):
         self.buttons = self._buttons()
         self.buttons.hide()
         grid.addWidget(self.buttons, 3, 1, 1, 2)
-        self.mark = label("as of here", "heading")
-        self.mark.setAlignment(Qt.AlignmentFlag.AlignRight)
-        self.mark.hide()
-        grid.addWidget(self.mark, 4, 0, 1, 3)
 
     def _buttons(self) -> QWidget:
         box = QWidget()
@@ -218,7 +274,6 @@ class LedgerLine(QFrame):
             self.form.show_model(step, units)
         self.form.setVisible(chosen)
         self.buttons.setVisible(chosen)
-        self.mark.setVisible(picture.shown.as_of == self.number + 1)
 
     def mousePressEvent(self, event):
         if event.button() == Qt.MouseButton.LeftButton:
@@ -226,33 +281,29 @@ class LedgerLine(QFrame):
             self.setFocus(Qt.FocusReason.MouseFocusReason)
 
     def mouseMoveEvent(self, event):
-        if self._pressed is None or (event.position().toPoint() - self._pressed).manhattanLength() < 12:
-            return
-        self._pressed = None
-        drag, carried = QDrag(self), QMimeData()
-        carried.setData(LINE_MIME, str(self.number).encode())
-        drag.setMimeData(carried)
-        drag.setPixmap(self.grab())
-        drag.exec(Qt.DropAction.MoveAction)
+        if self._pressed is not None and self._far(event):
+            self.setCursor(Qt.CursorShape.ClosedHandCursor)
 
     def mouseReleaseEvent(self, event):
-        if self._pressed is not None and event.button() == Qt.MouseButton.LeftButton:
-            self.toggle()
+        pressed, far = self._pressed, self._pressed is not None and self._far(event)
         self._pressed = None
+        self.unsetCursor()
+        if pressed is None or event.button() != Qt.MouseButton.LeftButton:
+            return
+        if far:
+            target = self._ledger.line_at(self._ledger.page_y(self, event))
+            # the line itself leaves a gap when it moves down
+            ledger_edits.move(self._desk, self.number, target - self.number - (target > self.number))
+        else:
+            self.toggle()
+
+    def _far(self, event) -> bool:
+        return (event.position().toPoint() - self._pressed).manhattanLength() >= DRAG_PIXELS
 
     def toggle(self) -> None:
         """Open this line's settings, or close them."""
         chosen = self._desk.picture.shown.line == self.number
         self._desk.show(line=None if chosen else self.number)
-
-    def dragEnterEvent(self, event):
-        if event.mimeData().hasFormat(LINE_MIME):
-            event.acceptProposedAction()
-
-    def dropEvent(self, event):
-        origin = int(bytes(event.mimeData().data(LINE_MIME)))
-        event.acceptProposedAction()
-        ledger_edits.move(self._desk, origin, self.number - origin)
 
     def keyPressEvent(self, event):
         alt = event.modifiers() & Qt.KeyboardModifier.AltModifier
