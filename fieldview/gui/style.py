@@ -37,8 +37,8 @@ QLabel[role="history"] {{ color: {filled}; font-size: {small}px; }}
 QLabel[role="title"] {{ font-size: 20px; font-weight: bold; }}
 QWidget[role="panel"], QScrollArea[role="panel"] {{ background: {panel}; }}
 QWidget[role="paper"] {{ background: {canvas}; }}
-QFrame[role="mark"] {{ background: {accent}; border: none; }}
-QLabel[role="mark"] {{ color: {accent}; font-size: {small}px; }}
+QFrame[role="mark line"] {{ background: {accent}; border: none; }}
+QLabel[role="mark words"] {{ color: {accent}; font-size: {small}px; }}
 QFrame[role="rule"] {{ background: {hairline}; border: none; }}
 QFrame[role="banner"] {{
     background: {panel}; border: 1px solid {attention}; border-left: 4px solid {attention};
@@ -93,7 +93,7 @@ QHeaderView::section {{
     padding: 3px 8px; font-size: {small}px;
 }}
 QTabBar::tab {{
-    background: transparent; border: none; border-bottom: 2px solid transparent; padding: 4px 10px;
+    background: transparent; border: none; border-bottom: 2px solid transparent; padding: 4px 7px;
     color: {muted};
 }}
 QTabBar::tab:selected {{ color: {text}; border-bottom: 2px solid {accent}; }}

@@ -143,8 +143,8 @@ class MainWindow(QMainWindow):
         right = _splitter(Qt.Orientation.Vertical, (self.quantities, self.readout), (3, 2))
         top = _splitter(Qt.Orientation.Horizontal, (self.ledger, middle, right), (0, 1, 0))
         top.setSizes([236, 790, 252])
-        whole = _splitter(Qt.Orientation.Vertical, (top, self._lower()), (1, 0))
-        whole.setSizes([490, 160])
+        whole = _splitter(Qt.Orientation.Vertical, (top, self._lower()), (3, 1))
+        whole.setSizes([480, 170])
         self._splitters |= {"right": right, "top": top, "whole": whole}
         return whole
 

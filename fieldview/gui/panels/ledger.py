@@ -120,10 +120,10 @@ class AsOfMark(QFrame):
         column.setContentsMargins(0, 0, 0, 2)
         column.setSpacing(0)
         line = QFrame()
-        line.setProperty("role", "mark")
+        line.setProperty("role", "mark line")
         line.setFixedHeight(2)
         column.addWidget(line)
-        words = label("as of here", "mark")
+        words = label("as of here", "mark words")
         words.setAlignment(Qt.AlignmentFlag.AlignRight)
         column.addWidget(words)
 

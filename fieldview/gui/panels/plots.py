@@ -34,7 +34,7 @@ class Plot(pg.PlotWidget):
             axis.enableAutoSIPrefix(False)
             axis.setPen(QColor(theme.muted))
             axis.setTextPen(QColor(theme.muted))
-            axis.setStyle(tickFont=themes.font(pixels=themes.SMALL_PIXELS), tickLength=-4)
+            axis.setStyle(tickFont=themes.font(pixels=themes.SMALL_PIXELS), tickLength=-4, maxTickLevel=0)
 
     def start(self, x_label: str, y_label: str) -> None:
         """An empty plot with these axes."""
