@@ -93,6 +93,10 @@ class Actions:
     def __getitem__(self, id: str) -> QAction:
         return self._actions[id]
 
+    def items(self):
+        """Pairs of id and action."""
+        return self._actions.items()
+
     def run(self, id: str) -> None:
         self._actions[id].trigger()
 

@@ -8,6 +8,7 @@ from fieldview.gui import dialogs
 from fieldview.gui.actions import Command, has_field, has_frames, has_selection, has_session
 from fieldview.gui.panels.quantities import FIRST
 from fieldview.gui.picture import Picture
+from fieldview.gui.theme import COLOUR_WORDS, REGION_COLOURS
 from fieldview.gui.tools import TOOLS
 from fieldview.gui.units_shown import CHOICES
 
@@ -74,6 +75,17 @@ def edit_commands() -> tuple[Command, ...]:
             "remove",
             has_selection,
             scope="canvas",
+        ),
+        *(
+            Command(
+                f"region.colour.{word.replace(' ', '_')}",
+                f"Colour {word}",
+                "Edit",
+                lambda w, colour=colour: colour_region(w, colour),
+                enabled=has_selection,
+                group="Region colour",
+            )
+            for word, colour in zip(COLOUR_WORDS, REGION_COLOURS, strict=True)
         ),
         Command("region.up", "Move region up", "Edit", lambda w: move_region(w, -1), enabled=has_selection),
         Command(
@@ -247,6 +259,12 @@ def delete_region(window) -> None:
     name = picture.shown.selected
     regions = tuple(r for r in picture.session.regions if r.name != name)
     window.desk.edit(f"Delete {name}", regions=regions)
+
+
+def colour_region(window, colour: str) -> None:
+    region = window.desk.picture.selected
+    changed = region.model_copy(update={"colour": colour})
+    window.desk.change_region(region.name, changed, f"Colour {region.name}")
 
 
 def duplicate_region(window) -> None:

@@ -17,6 +17,8 @@ GRID = 4
 REGION_COLOURS = ("#0072b2", "#d55e00", "#009e73", "#cc79a7", "#e69f00", "#56b4e9")
 """Okabe & Ito (2008), the ones that show on white and on near-black alike."""
 
+COLOUR_WORDS = ("blue", "vermilion", "green", "purple", "orange", "sky blue")
+
 REGION_DASHES = ((), (6, 3), (2, 2.5), (9, 3, 2, 3), (12, 4), (4, 2, 1, 2, 1, 2))
 """One dash per region as well, in pen widths, so that colour is never the only sign."""
 

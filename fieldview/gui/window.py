@@ -115,6 +115,10 @@ class MainWindow(QMainWindow):
         self.status = StatusLine(self.desk)
         self.setStatusBar(self.status)
         self.actions_table.bind("canvas", self.canvas, self.time_strip)
+        self.regions.view.setContextMenuPolicy(Qt.ContextMenuPolicy.ActionsContextMenu)
+        for id, action in self.actions_table.items():
+            if id.startswith("region."):
+                self.regions.view.addAction(action)
 
     def _tool_bar(self) -> QToolBar:
         bar = QToolBar("Tools")

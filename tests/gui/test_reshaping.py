@@ -78,6 +78,12 @@ def test_delete_duplicate_and_rename(chosen, qtbot):
     assert chosen.regions.model.rows[0][0].text == "upper"
 
 
+def test_a_region_is_given_another_colour(chosen):
+    action(chosen, "region.colour.green").trigger()
+    assert chosen.session.regions[0].colour == "#009e73"
+    assert action(chosen, "edit.undo").text() == "Undo colour core"
+
+
 def test_a_taken_name_is_refused_in_the_banner(chosen):
     action(chosen, "region.duplicate").trigger()
     chosen.regions.model.setData(chosen.regions.model.index(1, 0), "core")

@@ -37,6 +37,14 @@ class Thinning:
         return f"every {_ordinal(self.x)} vector along x and {_ordinal(self.y)} along y shown"
 
 
+@dataclass(frozen=True, eq=False)
+class Tint:
+    """Colours of arrows by a quantity: index of each node (uint8 (ny, nx)) in a table (256, 3)."""
+
+    levels: np.ndarray
+    table: np.ndarray
+
+
 @dataclass(frozen=True)
 class ArrowScale:
     """Length of arrows on the screen: ``pixels`` for the speed ``speed``; locked from frame to frame."""
@@ -89,31 +97,28 @@ class ArrowPainter:
         theme: Theme,
         scale: ArrowScale,
         *,
-        colours: np.ndarray | None = None,
+        tint: Tint | None = None,
         rejected: bool = False,
     ) -> None:
-        """Measured arrows in ink, filled ones in violet; ``colours`` (ny, nx) holds indices of a table."""
+        """Measured arrows in ink or in the colours of a quantity, filled ones in violet."""
         if not field.in_plane:
             return
         pick = shown_nodes(field, lens)
-        self._paint_group(painter, lens, field, pick, Status.MEASURED, theme.ink, scale, colours, theme)
-        self._paint_group(painter, lens, field, pick, Status.FILLED, theme.filled, scale, None, theme)
+        self._paint_group(painter, lens, field, pick, Status.MEASURED, theme.ink, scale, tint)
+        self._paint_group(painter, lens, field, pick, Status.FILLED, theme.filled, scale, None)
         if rejected:
             self._paint_rejected(painter, lens, field, theme, scale)
 
-    def _paint_group(self, painter, lens, field, pick, status, colour, scale, colours, theme):
+    def _paint_group(self, painter, lens, field, pick, status, colour, scale, tint):
         chosen = field.status[pick] == status
         tails = lens.to_pixels(field.grid.nodes[pick][chosen])
         velocity = (field.u[pick] + 1j * field.v[pick])[chosen]
-        if colours is None:
+        if tint is None:
             self._draw(painter, tails, velocity * scale.per_speed, QPen(QColor(colour), 1.1))
             return
-        from fieldview.gui.theme import colour_table
-
-        level = colours[pick][chosen] // 16
-        table = colour_table(theme, "signed")
+        level = tint.levels[pick][chosen] // 16
         for step in np.unique(level):
-            pen = QPen(QColor(*(int(c) for c in table[int(step) * 16 + 8])), 1.3)
+            pen = QPen(QColor(*(int(c) for c in tint.table[int(step) * 16 + 8])), 1.3)
             part = level == step
             self._draw(painter, tails[part], velocity[part] * scale.per_speed, pen)
 

@@ -10,7 +10,7 @@ from PySide6.QtGui import QColor, QPainter, QPainterPath, QPen, QPixmap
 from PySide6.QtWidgets import QGraphicsObject
 
 from fieldview.compute.field import Field
-from fieldview.gui.canvas.arrows import ArrowPainter, ArrowScale
+from fieldview.gui.canvas.arrows import ArrowPainter, ArrowScale, Tint
 from fieldview.gui.canvas.lens import Lens
 from fieldview.gui.canvas.map_image import MapImage, outline
 from fieldview.gui.canvas.marks import MarkPainter, polygon
@@ -91,7 +91,7 @@ class Flow:
     field: Field
     theme: Theme
     scale: ArrowScale
-    colours: np.ndarray | None = None
+    tint: Tint | None = None
     rejected: bool = False
 
 
@@ -152,7 +152,7 @@ class FlowLayer(Layer):
                 flow.field,
                 flow.theme,
                 flow.scale,
-                colours=flow.colours,
+                tint=flow.tint,
                 rejected=flow.rejected,
             )
             self._marks.paint(painter, lens, flow.field, flow.theme)

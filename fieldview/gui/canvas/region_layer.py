@@ -141,7 +141,7 @@ def _beside(at: np.ndarray, box: QRectF, lens: Lens, taken: list[QRectF], others
         outside = _area(there) - _area(there.intersected(inside))
         over_labels = sum(_area(there.intersected(other)) for other in taken)
         over_regions = sum(_area(there.intersected(other)) for other in [*others, around])
-        return 100 * outside + 20 * over_labels + over_regions
+        return 1000 * outside + 200 * over_labels + over_regions
 
     x = min(max(right + 8, inside.left()), max(inside.left(), inside.right() - box.width()))
     y = min(max(top, inside.top()), max(inside.top(), inside.bottom() - box.height()))

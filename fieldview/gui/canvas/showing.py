@@ -7,7 +7,7 @@ import numpy as np
 from fieldview.compute.field import Status
 from fieldview.gui import theme as themes
 from fieldview.gui import wording
-from fieldview.gui.canvas.arrows import arrow_scale, thinning
+from fieldview.gui.canvas.arrows import Tint, arrow_scale, thinning
 from fieldview.gui.canvas.furniture import Bar, Key
 from fieldview.gui.canvas.layers import Flow
 from fieldview.gui.canvas.map_image import map_image
@@ -125,15 +125,24 @@ class Showing:
             return
         lens = canvas.lens()
         scale = arrow_scale(field, lens, shown.speed or 0.0, shown.arrow_stretch)
-        tint, colours = picture.tint_now, None
-        if tint is not None and tint.name in shown.levels:
-            colours = level_indices(tint.values, *shown.levels[tint.name])
-        canvas.flow_layer.show(Flow(field, self._theme, scale, colours, shown.rejected_arrows))
+        tint, said = self._tint(picture)
+        canvas.flow_layer.show(Flow(field, self._theme, scale, tint, shown.rejected_arrows))
         factor, unit = picture.unit_view.of(field.units.velocity)
         speed = f"{wording.short(factor * shown.speed)} {unit or 'U'}" if shown.speed else ""
-        thin = thinning(field, lens).sentence if field.in_plane else "no arrows: the field has only w"
+        thin = said + thinning(field, lens).sentence if field.in_plane else "no arrows: the field has only w"
         pixels = scale.pixels if field.in_plane and shown.speed else 0.0
         canvas.legend.show_key(Key(speed if pixels else "", pixels, thin, self._marks), self._theme)
+
+    def _tint(self, picture: Picture) -> tuple[Tint | None, str]:
+        """Colours of the arrows by a quantity, and what the legend says of them."""
+        tint = picture.tint_now
+        if tint is None or tint.name not in picture.shown.levels:
+            return None, ""
+        low, high = picture.shown.levels[tint.name]
+        factor, unit = picture.unit_view.of(tint.unit)
+        ends = " … ".join(wording.short(factor * end, signed=tint.kind == "signed") for end in (low, high))
+        table = themes.colour_table(self._theme, tint.kind)
+        return Tint(level_indices(tint.values, low, high), table), f"colour: {tint.symbol} {ends} {unit} · "
 
     def _label_axes(self, picture: Picture) -> None:
         if picture.field is not None:
