@@ -53,12 +53,12 @@ def functional_covariance(
     image = b * sigma
     for axis, nodes in ((0, correlation[1]), (1, correlation[0])):
         if nodes > 1:
-            image = correlate1d(image, _triangle(nodes), axis=axis, mode="constant")
+            image = correlate1d(image, triangle(nodes), axis=axis, mode="constant")
     return float((a * sigma * image).sum())
 
 
-def _triangle(nodes: float) -> np.ndarray:
-    """Correlation coefficients at the lags -r ... r that are within reach."""
+def triangle(nodes: float) -> np.ndarray:
+    """Correlation coefficients at the lags -r ... r that are within reach: ndarray (2r + 1,)."""
     reach = max(math.ceil(nodes) - 1, 0)
     return 1 - np.abs(np.arange(-reach, reach + 1)) / max(nodes, 1.0)
 
@@ -70,7 +70,7 @@ def _coefficients_among(used: np.ndarray, shape: tuple[int, int], correlation) -
     number[used] = np.arange(used.size)
     iy, ix = np.divmod(used, nx)
     rows, columns, values = [], [], []
-    along_x, along_y = _triangle(correlation[0]), _triangle(correlation[1])
+    along_x, along_y = triangle(correlation[0]), triangle(correlation[1])
     for j, of_y in enumerate(along_y, start=-(along_y.size // 2)):
         for i, of_x in enumerate(along_x, start=-(along_x.size // 2)):
             inside = np.flatnonzero((iy + j >= 0) & (iy + j < ny) & (ix + i >= 0) & (ix + i < nx))
