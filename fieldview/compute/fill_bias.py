@@ -8,18 +8,13 @@ surroundings nearby, where the truth is known to within noise.
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
 
 import numpy as np
 
 from fieldview.compute.field import Field, Status
 from fieldview.compute.filling import FillMap, fill_map
-from fieldview.compute.grid import Grid
 from fieldview.compute.node_weights import NodeWeights, carried_back
 from fieldview.compute.pair_variance import pair_variance, through_variance
-
-_REACH = 12
-"""How far gaps are moved to be punched again. [nodes]"""
 
 _PLACES = 16
 """Places looked at for each gap, the nearest ones."""
@@ -31,12 +26,15 @@ _MOST_GAPS = 400
 """Gaps looked at; of more an even choice stands for all."""
 
 
-@dataclass(frozen=True, eq=False)
-class _Punched:
-    """A gap's errors at the places where it was punched: weights times (filled less measured)."""
+def _nearest_first(reach: int) -> np.ndarray:
+    """Shifts (k, 2) up to this far along y and x, the nearest first."""
+    steps = np.arange(-reach, reach + 1)
+    shifts = np.stack(np.meshgrid(steps, steps, indexing="ij"), axis=-1).reshape(-1, 2)
+    return shifts[np.argsort((shifts**2).sum(axis=1), kind="stable")][1:]
 
-    errors: np.ndarray  # (places,)
-    weights: list[NodeWeights]  # of those errors on the measured values, place by place
+
+_SHIFTS = _nearest_first(12)
+"""How gaps are moved to be punched again, along y and x. [nodes]"""
 
 
 def fill_uncertainty(weights: NodeWeights, field: Field) -> complex | float | None:
@@ -77,22 +75,26 @@ def _of_map(weights: NodeWeights, change: FillMap, field: Field) -> np.ndarray |
     if filled.nodes.size == 0:
         return np.zeros(2)
     gaps = list(_gaps(filled, field.grid.shape[1]))
-    step = -(-len(gaps) // _MOST_GAPS)
-    scale = len(gaps) / len(gaps[::step])
-    scatter, means, errors = np.zeros(2), [], 0.0
-    for gap in gaps[::step]:
-        punched = _punched(gap, change, field)
-        if punched.errors.size < _FEWEST:
-            return None
-        count = punched.errors.size
-        mean = punched.errors.mean()
-        errors += mean
-        off = _parts(punched.errors - mean)
-        scatter += np.maximum((off**2).sum(axis=1) / (count - 1) - _noise(punched.weights[0], field), 0.0)
-        means.extend(part.times(1 / count) for part in punched.weights)
+    chosen = gaps[:: -(-len(gaps) // _MOST_GAPS)]
+    if all(field.grid.is_uniform) and change.method != "local_median":
+        punched = [_moved(gap, change, field) for gap in chosen]
+    else:
+        punched = _filled_again(chosen, change, field)
+    if min(map(len, punched)) < _FEWEST:
+        return None
+    scale = len(gaps) / len(chosen)
+    scatter, means, total = np.zeros(2), [], 0.0
+    for weights_by_place in punched:
+        count = len(weights_by_place)
+        errors = np.array([_error(part, field) for part in weights_by_place])
+        total += errors.mean()
+        off = _parts(errors - errors.mean())
+        noise = _noise(weights_by_place[0], field)
+        scatter += np.maximum((off**2).sum(axis=1) / (count - 1) - noise, 0.0)
+        means.extend(part.times(1 / count) for part in weights_by_place)
     nodes = np.concatenate([part.nodes for part in means])
     together = NodeWeights.gathered(nodes, np.concatenate([part.values for part in means]))
-    common = _parts(np.array([errors]))[:, 0] ** 2 - _noise(together, field)
+    common = _parts(np.array([total]))[:, 0] ** 2 - _noise(together, field)
     return scale**2 * np.maximum(common, 0.0) + scale * scatter
 
 
@@ -122,62 +124,61 @@ def _gaps(filled: NodeWeights, nx: int) -> Iterator[NodeWeights]:
         yield NodeWeights(filled.nodes[members], filled.values[members])
 
 
-def _punched(gap: NodeWeights, change: FillMap, field: Field) -> _Punched:
-    """The gap at the nearest places where it and its sources are all measured."""
+def _error(weights: NodeWeights, field: Field) -> complex | float:
+    """The functional of the measured values."""
+    measured = field.measured
+    if np.iscomplexobj(weights.values):
+        u, v = measured["u"].ravel()[weights.nodes], measured["v"].ravel()[weights.nodes]
+        return complex((weights.values * (u - 1j * v)).sum())
+    return weights.of(measured["w"].ravel())
+
+
+def _moved(gap: NodeWeights, change: FillMap, field: Field) -> list[NodeWeights]:
+    """Weights of a gap's error, filled less measured, at the nearest places that are wholly measured.
+
+    On even axes a filling that does not look at the values has the same weights everywhere.
+    """
     nx = field.grid.shape[1]
     rows = change.rows(gap.nodes)
     filling = NodeWeights.gathered(rows.indices, rows.data * np.repeat(gap.values, np.diff(rows.indptr)))
     error = filling - gap
-    shifts = _shifts(error.nodes, field)
-    by_shift = all(field.grid.is_uniform) and change.method != "local_median"
-    weights = []
-    for dy, dx in shifts:
-        moved = NodeWeights(error.nodes + dy * nx + dx, error.values)
-        if not by_shift:
-            again = _filled_again(NodeWeights(gap.nodes + dy * nx + dx, gap.values), moved, change, field)
-            if again is None:
+    shifts = _SHIFTS[_on_measured(error.nodes, _SHIFTS, field)][:_PLACES]
+    return [NodeWeights(error.nodes + dy * nx + dx, error.values) for dy, dx in shifts]
+
+
+def _filled_again(gaps: list[NodeWeights], change: FillMap, field: Field) -> list[list[NodeWeights]]:
+    """The same where weights depend on the place or the values: all gaps moved together and filled anew."""
+    nx = field.grid.shape[1]
+    found: list[list[NodeWeights]] = [[] for _ in gaps]
+    measured = field.status == Status.MEASURED
+    open_ = [_on_measured(gap.nodes, _SHIFTS[:_PLACES], field) for gap in gaps]
+    for number, (dy, dx) in enumerate(_SHIFTS[:_PLACES]):
+        step = dy * nx + dx
+        able = [k for k in range(len(gaps)) if open_[k][number]]
+        if not able:
+            continue
+        wanted = np.zeros(measured.size, bool)
+        for k in able:
+            wanted[gaps[k].nodes + step] = True
+        wanted = wanted.reshape(measured.shape)
+        again = fill_map(
+            field.grid, measured & ~wanted, wanted, method=change.method, values=dict(field.measured)
+        )
+        for k in able:
+            nodes = gaps[k].nodes + step
+            if not again.filled.ravel()[nodes].all():
                 continue
-            moved = again
-        weights.append(moved)
-    if np.iscomplexobj(gap.values):
-        u, v = field.measured["u"].ravel(), field.measured["v"].ravel()
-        errors = [(part.values * (u[part.nodes] - 1j * v[part.nodes])).sum() for part in weights]
-    else:
-        w = field.measured["w"].ravel()
-        errors = [part.of(w) for part in weights]
-    return _Punched(np.array(errors), weights)
+            rows = again.rows(nodes)
+            spread = rows.data * np.repeat(gaps[k].values, np.diff(rows.indptr))
+            found[k].append(NodeWeights.gathered(rows.indices, spread) - NodeWeights(nodes, gaps[k].values))
+    return found
 
 
-def _shifts(nodes: np.ndarray, field: Field) -> np.ndarray:
-    """Shifts (k, 2) along y and x, nearest first, that put all nodes on measured ones."""
+def _on_measured(nodes: np.ndarray, shifts: np.ndarray, field: Field) -> np.ndarray:
+    """Which of the shifts (k, 2) along y and x put all nodes on measured ones: bool (k,)."""
     ny, nx = field.grid.shape
-    steps = np.arange(-_REACH, _REACH + 1)
-    shifts = np.stack(np.meshgrid(steps, steps, indexing="ij"), axis=-1).reshape(-1, 2)
-    distance = (shifts**2).sum(axis=1)
-    shifts = shifts[np.argsort(distance, kind="stable")][1:]
     rows, columns = np.divmod(nodes, nx)
     y, x = rows + shifts[:, :1], columns + shifts[:, 1:]
     inside = (y >= 0) & (y < ny) & (x >= 0) & (x < nx)
     there = field.status[np.clip(y, 0, ny - 1), np.clip(x, 0, nx - 1)] == Status.MEASURED
-    return shifts[(inside & there).all(axis=1)][:_PLACES]
-
-
-def _filled_again(gap: NodeWeights, sources: NodeWeights, change: FillMap, field: Field):
-    """The punched gap filled by the same method anew, where its weights depend on the place or the values."""
-    ny, nx = field.grid.shape
-    rows, columns = np.divmod(sources.nodes, nx)
-    y = slice(max(rows.min() - 2, 0), min(rows.max() + 3, ny))
-    x = slice(max(columns.min() - 2, 0), min(columns.max() + 3, nx))
-    block = Grid(field.grid.x[x], field.grid.y[y])
-    wanted = np.zeros(block.shape, bool)
-    gap_rows, gap_columns = gap.nodes // nx - y.start, gap.nodes % nx - x.start
-    wanted[gap_rows, gap_columns] = True
-    valid = (field.status[y, x] == Status.MEASURED) & ~wanted
-    values = {name: field.measured[name][y, x] for name in field.components}
-    again = fill_map(block, valid, wanted, method=change.method, values=values)
-    if not again.filled[wanted].all():
-        return None
-    found = again.rows(gap_rows * block.shape[1] + gap_columns)
-    iy, ix = np.divmod(found.indices, block.shape[1])
-    spread = found.data * np.repeat(gap.values, np.diff(found.indptr))
-    return NodeWeights.gathered((iy + y.start) * nx + ix + x.start, spread) - gap
+    return (inside & there).all(axis=1)

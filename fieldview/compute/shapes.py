@@ -12,8 +12,10 @@ ROUND_VERTICES = 720
 """Vertices of the polygon that stands for a circle or an ellipse.
 
 The polygon has the curve's own area: its vertices lie outside by a factor sqrt(t / sin t), t = 2 pi / n,
-so that the signed strip between polygon and curve has no area on any edge. What is left of an integral
-falls with n^-4 and is below 1e-8 of it here (checked in tests against twice and four times as many).
+so that the signed strip between polygon and curve has no area on any edge. What is left of a line or area
+integral, against a polygon of 16 times as many vertices: below 2e-9 of it on a smooth field, below 1e-6 of
+it (and of speed times length) on a vortex with 2 % noise and radii up to 300 cells, where an edge spans
+more than a cell. The bilinear kinks of pure noise leave some 1e-6 of speed times length at that radius.
 """
 
 
