@@ -95,21 +95,23 @@ class RunningSums:
         self.values = np.ascontiguousarray(values).ravel()
         width = np.diff(grid.x)
         means = 0.5 * width * (values[:, 1:] + values[:, :-1])
+        self.row = grid.x.size
         if cells.all():
             along = _running(means)
-            self.lower, self.upper = along[:-1], along[1:]
+            self.lower, self.upper = along[:-1].ravel(), along[1:].ravel()
         else:
-            self.lower = _running(np.where(cells, means[:-1], 0.0))
-            self.upper = _running(np.where(cells, means[1:], 0.0))
+            self.lower = _running(np.where(cells, means[:-1], 0.0)).ravel()
+            self.upper = _running(np.where(cells, means[1:], 0.0)).ravel()
 
     def integral(self, pieces: AreaPieces) -> float | complex:
         """Integral over the measured part of the contour's area."""
-        iy, ix = pieces.iy, pieces.ix
+        start = pieces.iy * self.row
+        here = start + pieces.ix
         # counted from the contour's first column, so that what lies left of it costs no digits
-        reference = int(ix.min(initial=self.lower.shape[1] - 1))
-        left = pieces.lower * (self.lower[iy, ix] - self.lower[iy, reference])
-        left += pieces.upper * (self.upper[iy, ix] - self.upper[iy, reference])
-        return left.sum() + (pieces.corners * self.values[pieces.nodes]).sum()
+        start += int(pieces.ix.min())
+        left = pieces.lower @ (self.lower.take(here) - self.lower.take(start))
+        left += pieces.upper @ (self.upper.take(here) - self.upper.take(start))
+        return left + (pieces.corners * self.values.take(pieces.nodes)).sum()
 
 
 class MeasuredArea:
@@ -120,8 +122,7 @@ class MeasuredArea:
 
     def within(self, pieces: AreaPieces) -> float:
         """[length^2]"""
-        reference = int(pieces.ix.min(initial=self.widths.shape[1] - 1))
-        width = self.widths[pieces.iy, pieces.ix] - self.widths[pieces.iy, reference]
+        width = self.widths[pieces.iy, pieces.ix] - self.widths[pieces.iy, int(pieces.ix.min())]
         return float(((pieces.lower + pieces.upper) * width).sum() + pieces.corners.sum())
 
 

@@ -150,6 +150,8 @@ class Contour:
     @cached_property
     def area_share(self) -> float:
         """Measured share of the area."""
+        if self.is_whole and self.prepared.has_no_gap:
+            return 1.0
         return _share(self.prepared.measured_area.within(self.area_pieces), self.shape.area)
 
     @cached_property

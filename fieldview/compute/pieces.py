@@ -64,8 +64,11 @@ class Pieces:
 
 @dataclass(frozen=True, eq=False)
 class _Cuts:
-    """Where edges cross the lines of one axis."""
+    """Where edges cross the lines of one axis; lengths counted from its first line."""
 
+    lines: np.ndarray
+    start: np.ndarray  # of each edge
+    extent: np.ndarray  # of each edge
     first: np.ndarray  # cell in which each edge starts
     direction: np.ndarray  # -1, 0, 1 for each edge
     on_line: np.ndarray  # edges that run along a line
@@ -90,17 +93,15 @@ def cut(outline: np.ndarray, grid: Grid, cells: np.ndarray, *, closed: bool) -> 
         Measured cells, framed by cells that are not.
     closed : bool
     """
-    starts, stops = (outline, np.roll(outline, -1)) if closed else (outline[:-1], outline[1:])
-    apart = stops != starts
+    corners = np.append(outline, outline[0]) if closed else outline
+    apart = corners[1:] != corners[:-1]
     if not apart.all():
-        starts, stops = starts[apart], stops[apart]
-    step = stops - starts
+        corners = corners[np.append(True, apart)]
+    starts, step = corners[:-1], corners[1:] - corners[:-1]
     place = grid.placement
-    begin, end = place.to_lattice(starts), place.to_lattice(stops)
+    on_lattice = place.to_lattice(corners)
     reach = np.finfo(float).eps * 8 * max(np.abs(outline).max(), abs(place.shift))
-    x_lines, x0, x1 = _relative(grid.x, begin.real, end.real, reach)
-    y_lines, y0, y1 = _relative(grid.y, begin.imag, end.imag, reach)
-    along_x, along_y = _cuts(x_lines, x0, x1), _cuts(y_lines, y0, y1)
+    along_x, along_y = _cuts(grid.x, on_lattice.real, reach), _cuts(grid.y, on_lattice.imag, reach)
 
     count = starts.size
     edge = np.concatenate([np.arange(count), along_x.edge, along_y.edge])
@@ -112,42 +113,39 @@ def cut(outline: np.ndarray, grid: Grid, cells: np.ndarray, *, closed: bool) -> 
     ix = _cells_along(along_x, count, 0, along_y.edge.size, order)
     iy = _cells_along(along_y, count, along_x.edge.size, 0, order)
     middle, share = 0.5 * (t + ends), ends - t
-    a, da = _local(x_lines, ix, x0, x1, edge, middle, share)
-    b, db = _local(y_lines, iy, y0, y1, edge, middle, share)
+    a, da = _local(along_x, ix, edge, middle, share)
+    b, db = _local(along_y, iy, edge, middle, share)
     _take_measured_side(along_x, along_y, edge, iy, ix, a, b, cells)
-    rise = share * (y1 - y0)[edge] * (-1.0 if place.mirrored else 1.0)
+    rise = share * (-along_y.extent if place.mirrored else along_y.extent)[edge]
     return Pieces(iy, ix, a, b, da, db, share * step[edge], rise, edge, middle, (starts, step))
 
 
-def _relative(axis: np.ndarray, p: np.ndarray, q: np.ndarray, reach: float):
-    """Lines and edge ends counted from the first line, ends within round-off of a line put on it."""
-    lines = axis - axis[0]
-    if lines.size == 1:
-        lines = np.array([0.0, 1.0])
-    reach = max(reach, np.finfo(float).eps * 8 * np.abs(axis).max(), 1e-12 * lines[-1] / (lines.size - 1))
-    return lines, _snapped(lines, p - axis[0], reach), _snapped(lines, q - axis[0], reach)
+def _cuts(axis: np.ndarray, places: np.ndarray, reach: float) -> _Cuts:
+    """Crossings of a chain of places on one axis with its lines.
 
-
-def _snapped(lines: np.ndarray, p: np.ndarray, reach: float) -> np.ndarray:
-    upper = np.minimum(np.searchsorted(lines, p), lines.size - 1)
-    nearest = np.where(
-        np.abs(lines[upper] - p) < np.abs(lines[upper - 1] - p), lines[upper], lines[upper - 1]
-    )
-    return np.where(np.abs(nearest - p) <= reach, nearest, p)
-
-
-def _cuts(lines: np.ndarray, p: np.ndarray, q: np.ndarray) -> _Cuts:
-    after_p, before_p = np.searchsorted(lines, p, "right"), np.searchsorted(lines, p, "left")
-    after_q, before_q = np.searchsorted(lines, q, "right"), np.searchsorted(lines, q, "left")
-    direction = np.sign(q - p).astype(int)
-    count = np.where(direction > 0, before_q - after_p, np.where(direction < 0, before_p - after_q, 0))
-    count = np.maximum(count, 0)
-    edge = np.repeat(np.arange(p.size), count)
+    Everything is counted from the first line; places within round-off of a line are put on it.
+    """
+    lines = axis - axis[0] if axis.size > 1 else np.array([0.0, 1.0])
+    reach = max(reach, np.finfo(float).eps * 8 * np.abs(axis[[0, -1]]).max(), 1e-12 * lines[-1] / axis.size)
+    places = places - axis[0]
+    before = lines.searchsorted(places - reach)  # lines below each place
+    after = lines.searchsorted(places + reach, "right")
+    on = np.flatnonzero(after > before)
+    places[on] = lines[before[on]]
+    start, extent = places[:-1], places[1:] - places[:-1]
+    direction = np.sign(extent).astype(np.int64)
+    forward = direction > 0
+    count = np.where(forward, before[1:] - after[:-1], before[:-1] - after[1:])
+    count = np.maximum(count, 0) * (direction != 0)
+    edge = np.repeat(np.arange(start.size), count)
+    first_line = np.where(forward, after[:-1], before[:-1] - 1)
+    # the numbers of the lines run on with the crossings, up or down
     number = np.arange(edge.size) - (np.cumsum(count) - count)[edge]
-    line = np.where(direction > 0, after_p, before_p - 1)[edge] + direction[edge] * number
-    t = (lines[line] - p[edge]) / (q - p)[edge]
-    first = np.where(direction < 0, before_p, after_p) - 1
-    return _Cuts(first, direction, (direction == 0) & (after_p != before_p), edge, t, count)
+    line = first_line[edge] + direction[edge] * number
+    t = (lines[line] - start[edge]) / extent[edge]
+    first = np.where(direction < 0, before[:-1], after[:-1]) - 1
+    on_line = (direction == 0) & (after[:-1] != before[:-1])
+    return _Cuts(lines, start, extent, first, direction, on_line, edge, t, count)
 
 
 def _cells_along(cuts: _Cuts, edges: int, before: int, behind: int, order: np.ndarray) -> np.ndarray:
@@ -160,12 +158,13 @@ def _cells_along(cuts: _Cuts, edges: int, before: int, behind: int, order: np.nd
     return np.cumsum(steps[order])
 
 
-def _local(lines, cell, p, q, edge, middle, share) -> tuple[np.ndarray, np.ndarray]:
-    held = np.clip(cell, 0, lines.size - 2)
-    per_width = (1.0 / np.diff(lines))[held]
-    extent = q - p
-    inside = (p[edge] - lines[held]) + middle * extent[edge]
-    return inside * per_width, share * extent[edge] * per_width
+def _local(cuts: _Cuts, cell, edge, middle, share) -> tuple[np.ndarray, np.ndarray]:
+    """Middle and extent of every piece in its cell, as shares of the cell's width."""
+    held = np.clip(cell, 0, cuts.lines.size - 2)
+    per_width = (1.0 / np.diff(cuts.lines))[held]
+    extent = cuts.extent[edge]
+    inside = (cuts.start[edge] - cuts.lines[held]) + middle * extent
+    return inside * per_width, share * extent * per_width
 
 
 def _take_measured_side(along_x: _Cuts, along_y: _Cuts, edge, iy, ix, a, b, cells) -> None:

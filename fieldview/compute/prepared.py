@@ -49,6 +49,11 @@ class Prepared:
         return _among(self.valid, np.logical_and)
 
     @cached_property
+    def has_no_gap(self) -> bool:
+        """Whether all cells are measured."""
+        return bool(self.cells.all())
+
+    @cached_property
     def framed_cells(self) -> np.ndarray:
         """The same with a frame of cells outside, which are not measured."""
         return np.pad(self.cells, 1)

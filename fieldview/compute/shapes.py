@@ -29,18 +29,19 @@ class Polygon:
     @cached_property
     def vertices(self) -> np.ndarray:
         """Complex ndarray (n,) of the corners, counter-clockwise, not repeated at the end. [length]"""
-        z = np.array([complex(*p) for p in self.points])
+        z = _complex(self.points)
         return z if _signed_area(z) >= 0 else z[::-1]
 
-    @property
+    @cached_property
     def area(self) -> float:
         """[length^2]"""
         return abs(_signed_area(self.vertices))
 
-    @property
+    @cached_property
     def length(self) -> float:
         """Length of the contour. [length]"""
-        return float(np.abs(np.roll(self.vertices, -1) - self.vertices).sum())
+        z = self.vertices
+        return float(np.abs(np.diff(z)).sum() + abs(z[0] - z[-1]))
 
     @property
     def centroid(self) -> complex:
@@ -79,10 +80,11 @@ class Polygon:
         z = self.vertices
         if not np.isfinite(z).all():
             return "the contour has coordinates that are not numbers"
-        if len(np.unique(z)) < 3 or self.area <= 1e-14 * self.length**2:
+        if self.area <= 1e-14 * self.length**2:
             return "the contour encloses no area; give at least three corners that are not in line"
-        keep = np.append(True, z[1:] != z[:-1])
-        ring = shapely.LinearRing(np.column_stack([z[keep].real, z[keep].imag]))
+        apart = z[1:] != z[:-1]
+        corners = z if apart.all() else z[np.append(True, apart)]
+        ring = shapely.LinearRing(np.ascontiguousarray(corners).view(float).reshape(-1, 2))
         if not ring.is_simple:
             return "the contour crosses itself; redraw it without crossings"
         return None
@@ -162,7 +164,7 @@ class Line:
 
     @cached_property
     def vertices(self) -> np.ndarray:
-        return np.array([complex(*p) for p in self.points])
+        return _complex(self.points)
 
     @property
     def length(self) -> float:
@@ -194,10 +196,14 @@ def circle(centre, radius: float) -> Ellipse:
     return Ellipse(tuple(centre), (radius, radius))
 
 
+def _complex(points) -> np.ndarray:
+    return np.ascontiguousarray(points, float).reshape(-1, 2).view(complex).reshape(-1)
+
+
 def _signed_area(z: np.ndarray) -> float:
     # taken from the first corner, so that far-off origins cost no digits
-    arms = z - z[0]
-    return 0.5 * float((arms.real * np.roll(arms, -1).imag - np.roll(arms, -1).real * arms.imag).sum())
+    arms = z[1:] - z[0]
+    return 0.5 * float((arms[:-1].conj() * arms[1:]).imag.sum())
 
 
 def _centroid(z: np.ndarray) -> complex:
