@@ -125,17 +125,14 @@ class Workbench:
     @cached_property
     def _keys(self) -> list[str]:
         """For each number of lines a digest of everything the field after them depends on."""
-        text = _run_key(self.session)
-        keys = [_digest(text)]
-        for line, step in enumerate(self.session.ledger):
-            # a line that is off changes nothing, yet its tally is kept by line
-            keys.append(_digest(keys[-1] + step.model_dump_json()))
-            if line + 1 == self._axes_lines:
-                keys[-1] = _digest(keys[-1] + self._error_key)
-        if self._axes_lines == 0:
-            keys[0] = _digest(keys[0] + self._error_key)
-            for line, step in enumerate(self.session.ledger):
-                keys[line + 1] = _digest(keys[line] + step.model_dump_json())
+        key, keys = _digest(_run_key(self.session)), []
+        for line, step in enumerate((*self.session.ledger, None)):
+            if line == self._axes_lines:
+                key = _digest(key + self._error_key)
+            keys.append(key)
+            if step is not None:
+                # a line that is off changes nothing, yet its tally is kept by line
+                key = _digest(key + step.model_dump_json())
         return keys
 
     @property
@@ -151,9 +148,7 @@ class Workbench:
                 break
             start -= 1
         if state is None:
-            start, state = 0, (self.run[frame], None)
-            if self._axes_lines == 0:
-                state = (self._with_error_model(state[0]), None)
+            start, state = 0, (self._with_error_model_after(0, self.run[frame]), None)
             self._keep(frame, 0, state)
         for line in range(start, count):
             state = self._step(frame, line, state[0])
@@ -167,8 +162,7 @@ class Workbench:
             field, tally = apply_line(field, line, step, _Around(self, frame, line))
         else:
             tally = switched_off(line, step)
-        if line + 1 == self._axes_lines:
-            field = self._with_error_model(field)
+        field = self._with_error_model_after(line + 1, field)
         return field, replace(tally, seconds=time.perf_counter() - began)
 
     def _keep(self, frame: int, count: int, state) -> None:
@@ -178,6 +172,10 @@ class Workbench:
         self._shelf.put((frame, self._keys[count]), state, needed=reach)
 
     # --- the error model ------------------------------------------------------------------------
+
+    def _with_error_model_after(self, count: int, field: Field) -> Field:
+        """The field after ``count`` lines; the error model is stated for the axes those lines lead to."""
+        return self._with_error_model(field) if count == self._axes_lines else field
 
     def _with_error_model(self, field: Field) -> Field:
         stated = self.session.units

@@ -140,7 +140,8 @@ def _plain(error: ValidationError) -> str:
         tag, known = first["ctx"]["tag"], first["ctx"]["expected_tags"].replace("'", "")
         return f'{place}: "{tag}" is not known; use one of {known}'
     if first["type"] == "union_tag_not_found":
-        return f"{place}: the key {first['ctx']['discriminator']} is required but left out"
+        key = first["ctx"]["discriminator"].strip("'")
+        return f"{place}.{key} is required but left out"
     word = _WORDS.get(first["type"])
     if word:
         return f"{place} {word}"
