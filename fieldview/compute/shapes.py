@@ -80,7 +80,7 @@ class Polygon:
         z = self.vertices
         if not np.isfinite(z).all():
             return "the contour has coordinates that are not numbers"
-        if self.area <= 1e-14 * self.length**2:
+        if self.area <= 1e-14 * self.length**2 and _in_line(z):
             return "the contour encloses no area; give at least three corners that are not in line"
         apart = z[1:] != z[:-1]
         corners = z if apart.all() else z[np.append(True, apart)]
@@ -184,6 +184,13 @@ class Line:
 
 
 Shape = Polygon | Ellipse | Line
+
+
+def _in_line(z: np.ndarray) -> bool:
+    """Whether all points lie on one straight line, or are one point."""
+    offsets = z - z[0]
+    far = offsets[np.abs(offsets).argmax()]
+    return bool((np.abs((offsets * np.conj(far)).imag) <= 1e-13 * abs(far) ** 2).all())
 
 
 def rectangle(corners) -> Polygon:
