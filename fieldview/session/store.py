@@ -6,7 +6,6 @@ import json
 import math
 import os
 import re
-import tempfile
 from collections.abc import Callable
 from pathlib import Path
 from typing import Any
@@ -14,6 +13,7 @@ from typing import Any
 from pydantic import ValidationError
 
 from fieldview.compute.errors import InputError
+from fieldview.files.writing import write_whole
 from fieldview.session.models import FORMAT, VERSION, Session
 
 MIGRATIONS: dict[int, Callable[[dict], dict]] = {}
@@ -77,24 +77,6 @@ def dump_session(session: Session) -> str:
 def schema() -> dict[str, Any]:
     """JSON Schema of the session file."""
     return Session.model_json_schema()
-
-
-def write_whole(path: Path, content: bytes) -> None:
-    """Write a file under a temporary name beside it, then rename: never half a file under its own name."""
-    handle, temporary = tempfile.mkstemp(prefix=f".{path.name}.", dir=path.parent)
-    try:
-        with os.fdopen(handle, "wb") as stream:
-            stream.write(content)
-            stream.flush()
-            os.fsync(stream.fileno())
-        # mkstemp makes private files; a session is as readable as any other new file
-        umask = os.umask(0)
-        os.umask(umask)
-        os.chmod(temporary, 0o666 & ~umask)
-        os.replace(temporary, path)
-    except BaseException:
-        Path(temporary).unlink(missing_ok=True)
-        raise
 
 
 def _migrated(document: dict, name: str) -> dict:
