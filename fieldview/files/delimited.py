@@ -149,7 +149,6 @@ def _table(text: bytes, dialect: Dialect, path: Path) -> tuple[list[np.ndarray],
             comment=mark if has_comments else None,
             na_values=sorted(_words()),
             skipinitialspace=dialect.delimiter != " ",
-            float_precision="round_trip",
             low_memory=False,
         )
     except (pandas.errors.ParserError, ValueError):

@@ -11,12 +11,12 @@ from fieldview.compute.errors import InputError
 
 ALIASES = {
     "fpm": "foot/minute",
-    "ft/m": "foot/minute",
     "kt": "knot",
     "kts": "knot",
-    "px": "pixel",
-    "pix": "pixel",
-    "pixels": "pixel",
+    "px": "image_pixel",
+    "pix": "image_pixel",
+    "pixel": "image_pixel",
+    "pixels": "image_pixel",
     "pulses": "pulse",
     "sec": "second",
     "degrees": "degree",
@@ -94,11 +94,7 @@ def _spelled_out(text: str) -> str:
     text = text.strip().translate(_SUPERSCRIPTS).replace("µ", "u").replace("μ", "u")
     text = re.sub(r"[·⋅]|(?<=[A-Za-z])\.(?=[A-Za-z])", " ", text)
     text = re.sub(r"\bper\b", "/", text, flags=re.IGNORECASE)
-    words = re.sub(
-        r"[A-Za-z°]+(?:/m\b(?=$))?",
-        lambda word: ALIASES.get(word[0].lower(), word[0]),
-        text,
-    )
+    words = re.sub(r"[A-Za-z°]+", lambda word: ALIASES.get(word[0].lower(), word[0]), text)
     # a number straight after a unit's name is its power
     words = re.sub(r"(?<=[A-Za-z])\s*\^?\s*(-\d+|\d+)(?![\d.]*[A-Za-z])", r"**(\1)", words)
     return re.sub(r"(?<=[\w)])\s+(?=[A-Za-z(])", "*", words)
@@ -109,7 +105,7 @@ def _registry():
     """One registry of our own, in which a pixel is no printer's length and a pulse separation counts."""
     import pint
 
-    registry = pint.UnitRegistry(on_redefinition="ignore")
-    registry.define("pixel = [image] = px")
+    registry = pint.UnitRegistry()
+    registry.define("image_pixel = [image]")
     registry.define("pulse = [pulses]")
     return registry, pint

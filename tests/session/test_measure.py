@@ -50,7 +50,7 @@ def test_rows_have_the_contracts_form_and_are_strict_json(session):
     assert [(row["frame"], row["time"]) for row in rows] == [(0, None), (1, None), (2, None)]
     core, _, cut = rows[0]["regions"]
     assert core["closed"] and core["length"]["unit"] == "m" and core["area"]["unit"] == "m^2"
-    assert core["coverage"] == {"contour": 1.0, "area": 1.0, "filled": 0.0}
+    assert core["coverage"] == {"contour": 1.0, "area": 1.0, "filled": 0.0, "cubic": 1.0}
     for key in ("circulation", "flux", "vorticity_integral", "divergence_integral"):
         assert set(core[key]) == {"value", "unit", "uncertainty"} and core[key]["unit"] == "m^2/s"
         assert set(core[key]["uncertainty"]) == {"random", "systematic", "gaps", "combined"}
