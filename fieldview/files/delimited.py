@@ -36,7 +36,7 @@ def read(path: Path) -> Contents:
     text = raw
     head = _head(raw, path.name)
     dialect = find_dialect(head[:SAMPLE_LINES] if len(head) > SAMPLE_LINES else head, path.name)
-    if not raw.isascii() and not _is_utf8(raw):
+    if b"\0" in raw[:4000] or (not raw.isascii() and not _is_utf8(raw)):
         text = decoded(raw, path.name).encode()
     elif raw.startswith(b"\xef\xbb\xbf"):
         text = raw[3:]
@@ -120,8 +120,6 @@ def _head(raw: bytes, name: str) -> list[str]:
 
 
 def _is_utf8(raw: bytes) -> bool:
-    if b"\0" in raw[:4000] or raw.startswith((b"\xff\xfe", b"\xfe\xff")):
-        return False
     try:
         raw.decode()
     except UnicodeDecodeError:
