@@ -130,19 +130,16 @@ def arrange(contents: Contents, roles: dict[str, str], reading: Reading) -> Rows
     """
     x, y = contents[roles["x"]], contents[roles["y"]]
     flow = [contents[roles[name]] for name in ("u", "v", "w", "speed", "direction") if name in roles]
-    if (
-        all(len(variable.dims) == 1 for variable in (x, y, *flow))
-        and len({v.shape for v in (x, y, *flow)}) == 1
-    ):
-        if x.dims == y.dims or x.dims[0].startswith("axis"):
-            return Rows(contents, roles)
+    lists = all(len(variable.dims) == 1 and variable.shape == x.shape for variable in (x, y, *flow))
+    if lists and (x.dims == y.dims or _is_unnamed(x)):
+        return Rows(contents, roles)
     return _arrays(contents, roles, reading, x, y, flow)
 
 
 def _arrays(contents, roles, reading, x, y, flow) -> Arrays:
     notes: list[str] = []
     dims_of = {}
-    named = not x.dims or not x.dims[0].startswith("axis")
+    named = not _is_unnamed(x)
     for variable in contents.variables:
         if variable.name in (x.name, y.name):
             dims_of[variable.name] = _axis_dims(variable, "x" if variable is x else "y", named)
@@ -195,6 +192,11 @@ def _arrays(contents, roles, reading, x, y, flow) -> Arrays:
         dims_of,
         tuple(notes),
     )
+
+
+def _is_unnamed(variable: Variable) -> bool:
+    """Whether the container names no dimensions."""
+    return variable.dims[:1] == ("axis0",)
 
 
 def _axis_dims(variable: Variable, axis: str, named: bool) -> tuple[str, ...]:

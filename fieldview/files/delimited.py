@@ -192,7 +192,8 @@ def _refuse_words(path: Path, name: str, column: int, dialect: Dialect) -> None:
         cell = cells[column] if column < len(cells) else ""
         if not is_number(cell, dialect.decimal) and cell.lower() not in MISSING_WORDS:
             raise InputError(
-                f'{path.name}, line {line}: "{cell[:40]}" in the column "{name}" is no number; correct the line'
+                f'{path.name}, line {line}: "{cell[:40]}" in the column "{name}" is no number; '
+                "correct the line"
             )
 
 

@@ -152,10 +152,10 @@ def _lattice(layout: Layout, frame: int, name: str):
     x, y = source.axes(frame)
     placement = layout.contents.stated.get("placement", Placement())
     try:
+        if not placement.is_identity:
+            z = placement.to_lattice(x + 1j * y)
+            x, y = z.real, z.imag
         if isinstance(source, Rows):
-            if not placement.is_identity:
-                z = placement.to_lattice(x + 1j * y)
-                x, y = z.real, z.imag
             lattice = lattice_of(x, y)
             return lattice, lattice.spread, placement
         if x.ndim == 2:

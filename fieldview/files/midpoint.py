@@ -16,8 +16,8 @@ def to_midpoint(field: Field, *, pulse_separation: float | None) -> Field:
     """The field whose vectors belong to their nodes as midpoints of the displacements.
 
     A displacement d found at the first image's position p belongs to p + d/2. The values at the nodes
-    follow from u(x) = U(x - d/2), with U as found and its local gradient, exactly so where U is linear. Left
-    as they are, the vectors of a rotation have a divergence of -Omega^2 dt. Uncertainties are kept as they were.
+    follow from u(x) = U(x - d/2), with U as found and its local gradient, exactly so where U is linear.
+    Left as they are, the vectors of a rotation have a divergence of -Omega^2 dt. Uncertainties are kept.
     """
     if not field.in_plane:
         return field

@@ -27,7 +27,7 @@ LONG_NAMES = {
 
 
 def read(path: Path) -> Contents:
-    """The variables of a file, read by frame; scale factors and fill values are applied, times are not decoded."""
+    """The variables of a file, read by frame; scale factors and fill values applied, times as numbers."""
     dataset = _opened(path)
     lock = threading.Lock()
     variables, notes = [], []

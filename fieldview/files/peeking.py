@@ -21,7 +21,7 @@ SENTINELS = (99.0, 999.0, 9999.0, 99999.0, 999999.0)
 
 @dataclass(frozen=True)
 class PeekedColumn:
-    """One column or variable: its name, unit as written, role (``channel``, ``ignored`` or ``words`` else)."""
+    """One column or variable; ``role`` is channel, ignored, words or not used where it has none."""
 
     name: str
     unit: str | None
@@ -74,18 +74,18 @@ class Peek:
             turn = "counter-clockwise" if self.strongest_vorticity > 0 else "clockwise"
             found.append(
                 f"the strongest vorticity of the first frame is {self.strongest_vorticity:+.3g} "
-                f"{self.vorticity_unit}, {turn}; if it should turn the other way, y_axis or v_positive is wrong"
+                f"{self.vorticity_unit}, {turn}; "
+                "if it should turn the other way, y_axis or v_positive is wrong"
             )
         return tuple(sentence for sentence in (*found, *self.doubts) if sentence)
 
     def text(self) -> str:
         """For the terminal."""
         lines = [str(self.path), ""]
-        widths = [max([4, *(len(text) for text in column)]) for column in zip(*self._rows(), strict=True)]
-        for row in self._rows():
-            lines.append(
-                "  " + "  ".join(f"{text:<{width}}" for text, width in zip(row, widths, strict=True)).rstrip()
-            )
+        rows = self._rows()
+        widths = [max(map(len, column)) for column in zip(*rows, strict=True)]
+        for row in rows:
+            lines.append("  " + "  ".join(map(str.ljust, row, widths)).rstrip())
         lines += ["", *(f"- {sentence}" for sentence in self.sentences)]
         if self.questions:
             lines += ["", "To be answered under run.reading of the session:"]
@@ -198,8 +198,8 @@ def _odd_values(layout: Layout) -> list[str]:
                 count = int(np.count_nonzero(values == signed))
                 if count:
                     doubts.append(
-                        f'"{layout.roles[role]}" is {signed:g} at {count:,} nodes; if that stands for no value, '
-                        "list it under missing"
+                        f'"{layout.roles[role]}" is {signed:g} at {count:,} nodes; '
+                        "if that stands for no value, list it under missing"
                     )
     if {"u", "v"} <= layout.roles.keys():
         u, v = (np.ravel(layout.source.values(layout.roles[role], 0)) for role in ("u", "v"))

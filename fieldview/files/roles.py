@@ -24,7 +24,7 @@ NAMES = {
     "sigma_v": "sigmav vsigma vuncertainty uncertaintyv",
     "sigma_w": "sigmaw wsigma wuncertainty uncertaintyw",
 }
-"""Names in use (common practice, no source), in small letters and without what is neither letter nor digit."""
+"""Names in use (common practice, no source), in small letters, without signs and blanks."""
 
 STANDARD_NAMES = {
     "projection_x_coordinate": "x",
@@ -126,7 +126,8 @@ def _named(contents: Contents, entry: str | int, key: str) -> str:
     if isinstance(entry, int):
         if entry >= len(names):
             raise InputError(
-                f"{contents.path.name}: {key} is column {entry}, but the file has columns 0 to {len(names) - 1}"
+                f"{contents.path.name}: {key} is column {entry}, "
+                f"but the file has columns 0 to {len(names) - 1}"
             )
         return names[entry]
     same = [name for name in names if name == entry] or [n for n in names if n.lower() == entry.lower()]
@@ -147,12 +148,13 @@ def _role_of(variable: Variable) -> str | None:
 
 
 def _refuse_globe(contents: Contents, roles: dict[str, str]) -> None:
+    positions = {roles.get("x"), roles.get("y")}
     for variable in contents.variables:
-        named = variable.standard_name in GLOBE or variable.name.lower() in GLOBE
-        degrees = (variable.unit or "").replace("_", " ").lower()
-        if named or degrees.startswith(("degrees north", "degrees east", "degree north", "degree east")):
-            if variable.name in (roles.get("x"), roles.get("y")) or not {"x", "y"} <= roles.keys():
-                raise InputError(
-                    f'{contents.path.name}: "{variable.name}" is a longitude or latitude; project the '
-                    "positions to a plane in metres first"
-                )
+        degrees = (variable.unit or "").replace("_", " ").replace("degrees", "degree").lower()
+        globe = variable.standard_name in GLOBE or variable.name.lower() in GLOBE
+        globe = globe or degrees.startswith(("degree north", "degree east"))
+        if globe and (variable.name in positions or None in positions):
+            raise InputError(
+                f'{contents.path.name}: "{variable.name}" is a longitude or latitude; project the '
+                "positions to a plane in metres first"
+            )

@@ -145,8 +145,8 @@ class Run:
         field = field_of(layout, inside, self.grid)
         if field.units != self.units:
             raise InputError(
-                f'{self.sources[number].name}: is in "{field.units}" where the first file is in "{self.units}"; '
-                "keep only files of one kind in a run"
+                f'{self.sources[number].name}: is in "{field.units}" where the first file is in '
+                f'"{self.units}"; keep only files of one kind in a run'
             )
         interval = self.reading.frame_interval
         return field if interval is None else field.with_(time=frame * interval)

@@ -90,7 +90,8 @@ def find_scales(
     for role, unit in lengths.items():
         if unit is not None and unit.kind not in ("length", "pixel"):
             raise InputError(
-                f'{name}: "{roles[role]}" is in {written[role]}, which is no length; give length_unit, such as mm'
+                f'{name}: "{roles[role]}" is in {written[role]}, which is no length; '
+                "give length_unit, such as mm"
             )
     for role, unit in flows.items():
         if unit is not None and unit.kind not in _FLOW_KINDS:
@@ -128,7 +129,8 @@ def find_scales(
         unit.kind in ("pixel", "pixel velocity") for unit in flows.values()
     ):  # fmt: skip
         notes.append(
-            "pulse_separation is not used for displacements in pixels; a calibrate line of the ledger states its own"
+            "pulse_separation is not used for displacements in pixels; "
+            "a calibrate line of the ledger states its own"
         )
     angle = _angle_factor(contents, roles, notes)
     return (
@@ -160,13 +162,13 @@ def _flow_factor(
     in_pixels = unit.kind.startswith("pixel")
     if in_pixels and units is METRIC:
         raise InputError(
-            f'{name}: "{column}" is in {written}, but the positions are in a length; give velocity_unit as the '
-            'size of a pixel, such as "0.1 mm", and the pulse_separation'
+            f'{name}: "{column}" is in {written}, but the positions are in a length; '
+            'give velocity_unit as the size of a pixel, such as "0.1 mm", and the pulse_separation'
         )
     if not in_pixels and units is PIXEL:
         raise InputError(
-            f'{name}: "{column}" is in {written}, but the positions are in pixels; give length_unit as the size '
-            'of a pixel, such as "0.1 mm"'
+            f'{name}: "{column}" is in {written}, but the positions are in pixels; '
+            'give length_unit as the size of a pixel, such as "0.1 mm"'
         )
     if unit.kind in ("velocity", "pixel", "pixel velocity"):
         return unit.factor, None
