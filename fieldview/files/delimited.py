@@ -40,7 +40,7 @@ def read(path: Path) -> Contents:
         text = decoded(raw, path.name).encode()
     elif raw.startswith(b"\xef\xbb\xbf"):
         text = raw[3:]
-    table, changed = _table(text, dialect, path)
+    table = _table(text, dialect, path)
     stated = said_by_remarks(dialect.remarks)
     rows = [dialect.split(line) for line in head[dialect.first_line :][:8] if line.strip()]
     variables, notes = [], []
@@ -66,7 +66,6 @@ def read(path: Path) -> Contents:
     _refuse_short_rows(path, table, dialect)
     kind = f"text, {NAMES_OF_DELIMITERS[dialect.delimiter]} between columns"
     kind += ", decimal comma" if dialect.decimal == "," else ""
-    notes += changed
     return Contents(
         path, kind, tuple(variables), tuple(notes), tuple(map(tuple, [dialect.names, *rows])), stated
     )
@@ -127,24 +126,26 @@ def _is_utf8(raw: bytes) -> bool:
     return True
 
 
-def _table(text: bytes, dialect: Dialect, path: Path) -> tuple[list[np.ndarray], list[str]]:
+def _table(text: bytes, dialect: Dialect, path: Path) -> list[np.ndarray]:
     """Columns of the table: float arrays, or object arrays where there are words among the numbers."""
     import pandas
 
-    notes = []
-    if (b"D" in text or b"d" in text) and re.search(rb"\d[dD][+-]?\d", text):
-        text = re.sub(rb"(\d\.?)[dD]([+-]?\d)", rb"\1e\2", text)
-    has_comments = any(b"\n" + mark.encode() in text for mark in ("#", "%", "!"))
-    mark = next((m for m in "#%!" if f"\n{m}".encode() in text), None)
+    start = _start_of_line(text, dialect.first_line)
+    if max(text.find(b"D", start), text.find(b"d", start)) >= 0:
+        text = text[:start] + re.sub(rb"(\d\.?)[dD]([+-]?\d)", rb"\1e\2", text[start:])
+    # one sign is looked for before two: that is done at the speed of memory
+    marks = [mark for mark in (b"#", b"%", b"!") if text.find(mark, start) >= 0]
+    mark = next((mark.decode() for mark in marks if text.find(b"\n" + mark, start) >= 0), None)
+    stream = io.BytesIO(text)
+    stream.seek(start)
     try:
         frame = pandas.read_csv(
-            io.BytesIO(text),
+            stream,
             sep=r"\s+" if dialect.delimiter == " " else dialect.delimiter,
             decimal=dialect.decimal,
             header=None,
             names=range(len(dialect.names)),
-            skiprows=dialect.first_line,
-            comment=mark if has_comments else None,
+            comment=mark,
             na_values=sorted(_words()),
             skipinitialspace=dialect.delimiter != " ",
             low_memory=False,
@@ -157,7 +158,14 @@ def _table(text: bytes, dialect: Dialect, path: Path) -> tuple[list[np.ndarray],
         column = frame[number]
         plain = column.dtype.kind in "fiub"
         columns.append(column.to_numpy(float) if plain else column.to_numpy(object))
-    return columns, notes
+    return columns
+
+
+def _start_of_line(text: bytes, line: int) -> int:
+    start = 0
+    for _ in range(line):
+        start = text.find(b"\n", start) + 1
+    return start
 
 
 def _words() -> set[str]:

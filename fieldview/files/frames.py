@@ -87,8 +87,10 @@ def lay_out(contents: Contents, reading: Reading) -> Layout:
     return Layout(contents, roles, scales, source, reading, channels, notes)
 
 
-def field_of(layout: Layout, frame: int, known: Grid | None = None) -> Field:
+def frame_of(layout: Layout, frame: int, known: Grid | None = None) -> tuple[Field, tuple[str, ...]]:
     """One frame of a file as a field in the program's units, its lattice to the right and up.
+
+    With it what was dropped while its rows were put on the lattice, in words.
 
     ``known`` is the grid of the run; a frame with the same lines, or some of them, is placed on it.
     """
@@ -138,12 +140,7 @@ def field_of(layout: Layout, frame: int, known: Grid | None = None) -> Field:
     )
     if reading.vector_position == "first_image":
         made = to_midpoint(made, pulse_separation=reading.pulse_separation)
-    return made
-
-
-def lattice_notes(layout: Layout, frame: int = 0) -> tuple[str, ...]:
-    """What was dropped while one frame was put on its lattice."""
-    return _lattice(layout, frame, layout.contents.path.name)[0].notes
+    return made, lattice.notes
 
 
 def _lattice(layout: Layout, frame: int, name: str):
@@ -307,4 +304,4 @@ def _onto(grid: Grid, known: Grid, name: str):
     return onto
 
 
-__all__ = ["Layout", "Units", "field_of", "lattice_notes", "lay_out"]
+__all__ = ["Layout", "Units", "frame_of", "lay_out"]

@@ -11,7 +11,7 @@ from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field, Status
 from fieldview.files.contents import Contents
 from fieldview.files.formats import read_contents
-from fieldview.files.frames import Layout, field_of, lattice_notes, lay_out
+from fieldview.files.frames import Layout, frame_of, lay_out
 from fieldview.files.reading import Reading
 from fieldview.files.roles import NeedsAnswer, Question, find_roles
 
@@ -113,8 +113,8 @@ def peek(path: str | Path, reading: Reading | None = None) -> Peek:
             doubts=contents.notes,
             first_rows=contents.first_rows,
         )
-    first = field_of(layout, 0)
-    notes = (*layout.notes, *lattice_notes(layout))
+    first, dropped = frame_of(layout, 0)
+    notes = (*layout.notes, *dropped)
     strongest = _strongest_vorticity(first)
     return Peek(
         path,

@@ -18,7 +18,7 @@ from fieldview.compute.grid import Grid
 from fieldview.compute.units import Units
 from fieldview.files.arrangement import Rows
 from fieldview.files.formats import read_contents
-from fieldview.files.frames import Layout, field_of, lattice_notes, lay_out
+from fieldview.files.frames import Layout, frame_of, lay_out
 from fieldview.files.reading import Reading
 from fieldview.files.sources import expand
 
@@ -71,9 +71,11 @@ class Run:
         self._fields: OrderedDict[int, Field] = OrderedDict()
         first = self._layout(0)
         self.units: Units = first.scales.units
-        self.notes = (*first.notes, *lattice_notes(first))
         self._first_frames = first.frames
-        self.grid: Grid = field_of(first, 0).grid
+        field, dropped = frame_of(first, 0)
+        self._fields[0] = self._timed(field, 0)
+        self.notes = (*first.notes, *dropped)
+        self.grid: Grid = field.grid
 
     @cached_property
     def _ends(self) -> list[int]:
@@ -142,12 +144,15 @@ class Run:
                 f"{self.sources[number].name}: holds {layout.frames} frames where the first file holds one; "
                 "open it as a run of its own"
             )
-        field = field_of(layout, inside, self.grid)
+        field, _ = frame_of(layout, inside, self.grid)
         if field.units != self.units:
             raise InputError(
                 f'{self.sources[number].name}: is in "{field.units}" where the first file is in '
                 f'"{self.units}"; keep only files of one kind in a run'
             )
+        return self._timed(field, frame)
+
+    def _timed(self, field: Field, frame: int) -> Field:
         interval = self.reading.frame_interval
         return field if interval is None else field.with_(time=frame * interval)
 

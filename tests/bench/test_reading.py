@@ -1,0 +1,38 @@
+"""Reading a million-row text file into a Field, as a multiple of pandas reading the same file, interleaved."""
+
+from time import perf_counter
+
+import numpy as np
+import pytest
+
+from fieldview.files import open_run
+
+ROUNDS = 5
+
+
+@pytest.fixture(scope="module")
+def million_rows(tmp_path_factory):
+    path = tmp_path_factory.mktemp("bench") / "a.csv"
+    axis = np.arange(1000) * 0.001
+    xx, yy = np.meshgrid(axis, axis)
+    u, v = np.random.default_rng(0).normal(size=(2, 1_000_000))
+    table = np.column_stack([xx.ravel(), yy.ravel(), u, v])
+    np.savetxt(path, table, fmt="%.6f", delimiter=",", header="x [m],y [m],u [m/s],v [m/s]", comments="")
+    return path
+
+
+def test_reading_a_million_rows(million_rows):
+    import pandas
+
+    ratios = []
+    for _ in range(ROUNDS):
+        start = perf_counter()
+        pandas.read_csv(million_rows, header=None, names=range(4), skiprows=1, low_memory=False)
+        middle = perf_counter()
+        field = open_run([million_rows])[0]
+        end = perf_counter()
+        ratios.append((end - middle) / (middle - start))
+    assert field.grid.shape == (1000, 1000)
+    ratio = float(np.median(ratios))
+    print(f"a million rows into a Field: {ratio:.2f} x pandas.read_csv")
+    assert ratio <= 1.8
