@@ -92,7 +92,7 @@ def save_picture(window, path: Path, *, magnified: int = 2) -> None:
 
 def table_text(window, separator: str) -> str:
     """The Regions table as text: titles, then a row for each region, numbers with a plain minus."""
-    from fieldview.gui import wording
+    from fieldview.publish import wording
 
     model = window.regions.model
     lines = [separator.join(model.titles)]

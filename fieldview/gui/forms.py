@@ -11,8 +11,8 @@ from PySide6.QtCore import Qt
 from PySide6.QtWidgets import QComboBox, QFormLayout, QHBoxLayout, QLabel, QLineEdit, QWidget
 
 from fieldview.compute.units import Units
-from fieldview.gui import wording
 from fieldview.gui.panels.base import label, set_property
+from fieldview.publish import wording
 
 HIDDEN = ("step", "on", "shape", "name", "colour")
 

@@ -2,27 +2,15 @@
 
 from __future__ import annotations
 
-import sys
-import sysconfig
 from functools import lru_cache
-from pathlib import Path
 
 from PySide6.QtCore import QByteArray, QRectF, Qt
 from PySide6.QtGui import QIcon, QPainter, QPixmap
 
-import fieldview
 from fieldview.gui.theme import Theme
+from fieldview.shipped import shipped_folder
 
 _SIZES = (16, 20, 24, 32, 48)
-
-
-def icon_folder() -> Path:
-    """Where the drawings lie: beside the package in a checkout, under share/loopflux once installed."""
-    beside = Path(fieldview.__file__).resolve().parent.parent / "icons"
-    installed = [
-        Path(root) / "share" / "loopflux" / "icons" for root in (sysconfig.get_path("data"), sys.prefix)
-    ]
-    return next((folder for folder in (beside, *installed) if (folder / "move.svg").is_file()), beside)
 
 
 @lru_cache(maxsize=256)
@@ -47,7 +35,7 @@ def drawing(name: str, colour: str, size: int) -> QPixmap:
 
     pixmap = QPixmap(size, size)
     pixmap.fill(Qt.GlobalColor.transparent)
-    path = icon_folder() / f"{name}.svg"
+    path = shipped_folder("icons") / f"{name}.svg"
     if path.is_file():
         text = path.read_text(encoding="utf-8").replace("currentColor", colour)
         painter = QPainter(pixmap)

@@ -4,10 +4,11 @@ from __future__ import annotations
 
 import numpy as np
 
-from fieldview.gui import wording, work
+from fieldview.gui import work
 from fieldview.gui.canvas.arrows import typical_speed
 from fieldview.gui.jobs import LATER, Answer
 from fieldview.gui.picture import Card, MapOf, Measured, Picture, field_parts
+from fieldview.publish import wording
 
 
 class Pursuit:

@@ -8,8 +8,8 @@ from PySide6.QtCore import QTimer
 from PySide6.QtWidgets import QHBoxLayout, QLabel, QProgressBar, QPushButton, QStatusBar, QWidget
 
 from fieldview.compute.field import Status
-from fieldview.gui import wording
 from fieldview.gui.picture import Picture
+from fieldview.publish import wording
 
 PATIENCE = 1.0
 """Seconds after which work shows its progress."""

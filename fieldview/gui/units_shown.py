@@ -8,7 +8,7 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 
-from fieldview.gui import wording
+from fieldview.publish import wording
 from fieldview.session.models import Session
 
 LENGTHS, TIMES = ("m", "px"), ("s", "pulse")

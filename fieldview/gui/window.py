@@ -23,7 +23,7 @@ from fieldview.gui.canvas.showing import Showing
 from fieldview.gui.canvas.view import Canvas
 from fieldview.gui.commands import all_commands
 from fieldview.gui.desk import Desk
-from fieldview.gui.icons import icon, icon_folder
+from fieldview.gui.icons import icon
 from fieldview.gui.panels.banner import Banner
 from fieldview.gui.panels.drawer import Drawer
 from fieldview.gui.panels.ledger import Ledger
@@ -36,6 +36,7 @@ from fieldview.gui.recovery import Recovery, lost_sessions
 from fieldview.gui.status_line import StatusLine
 from fieldview.gui.style import style_sheet
 from fieldview.gui.tools import TOOLS
+from fieldview.shipped import shipped_folder
 
 WORKING_KEYS = (Qt.Key.Key_Return, Qt.Key.Key_Enter, Qt.Key.Key_Escape, Qt.Key.Key_Backspace)
 
@@ -178,7 +179,7 @@ class MainWindow(QMainWindow):
     def set_theme(self, new: theme.Theme) -> None:
         self.theme = new
         QApplication.instance().setPalette(theme.palette(new))
-        self.setStyleSheet(style_sheet(new, (icon_folder() / "chevron.svg").as_posix()))
+        self.setStyleSheet(style_sheet(new, (shipped_folder("icons") / "chevron.svg").as_posix()))
         self.setWindowIcon(icon("loopflux", new))
         self.actions_table.dress(lambda name: icon(name, new))
         for panel in self._panels:

@@ -72,7 +72,7 @@ def test_values_smaller_than_their_uncertainty_are_muted_not_hidden(window, qtbo
 
 
 def test_the_label_beside_the_region_says_the_same(window, qtbot):
-    from fieldview.gui import wording
+    from fieldview.publish import wording
 
     settle(qtbot, window)
     number = measure(window.session, frames=[0])[0]["regions"][0]["circulation"]

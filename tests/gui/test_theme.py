@@ -4,9 +4,10 @@ import numpy as np
 import pytest
 
 from fieldview.gui import theme
-from fieldview.gui.icons import drawing, icon_folder
+from fieldview.gui.icons import drawing
 from fieldview.gui.theme import DARK, LIGHT
 from fieldview.gui.tools import TOOLS
+from fieldview.shipped import shipped_folder
 
 
 @pytest.mark.parametrize("shown", [LIGHT, DARK], ids=["light", "dark"])
@@ -49,7 +50,7 @@ def test_neighbouring_regions_differ_in_colour_and_dash():
 def test_every_tool_has_its_own_drawing(qapp):
     pictures = {}
     for tool in TOOLS:
-        assert (icon_folder() / f"{tool.id}.svg").is_file(), tool.id
+        assert (shipped_folder("icons") / f"{tool.id}.svg").is_file(), tool.id
         image = drawing(tool.id, "#000000", 24).toImage()
         pictures[tool.id] = bytes(image.constBits())
         assert any(pictures[tool.id]), f"{tool.id} draws nothing"

@@ -11,8 +11,8 @@ from PySide6.QtGui import QBrush, QColor, QFontMetricsF, QImage, QPainter, QPen,
 from PySide6.QtWidgets import QGraphicsWidget, QSizePolicy
 
 from fieldview.gui import theme as themes
-from fieldview.gui import wording
 from fieldview.gui.theme import Theme
+from fieldview.publish import wording
 
 _MOST = 16_000.0
 

@@ -6,7 +6,6 @@ import numpy as np
 
 from fieldview.compute.field import Status
 from fieldview.gui import theme as themes
-from fieldview.gui import wording
 from fieldview.gui.canvas.arrows import Tint, arrow_scale, thinning
 from fieldview.gui.canvas.furniture import Bar, Key
 from fieldview.gui.canvas.layers import Flow
@@ -17,6 +16,7 @@ from fieldview.gui.picture import MapOf, Picture
 from fieldview.gui.region_text import label_lines
 from fieldview.gui.theme import LIGHT, Theme
 from fieldview.gui.units_shown import UnitView
+from fieldview.publish import wording
 
 _MARK_WORDS = (
     (Status.MEASURED, "measured"),

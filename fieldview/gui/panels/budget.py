@@ -8,13 +8,14 @@ from PySide6.QtCore import QRectF, Qt
 from PySide6.QtGui import QColor, QPainter
 from PySide6.QtWidgets import QComboBox, QHBoxLayout, QStyledItemDelegate, QTableView, QVBoxLayout, QWidget
 
-from fieldview.gui import wording
 from fieldview.gui.panels.base import label
 from fieldview.gui.panels.tables import RAW, Cell, CellModel, dense
 from fieldview.gui.picture import Picture
-from fieldview.gui.region_text import ENTRIES, scaled
+from fieldview.gui.region_text import scaled
 from fieldview.gui.theme import LIGHT, Theme
 from fieldview.gui.units_shown import UnitView
+from fieldview.publish import wording
+from fieldview.publish.region_numbers import ENTRIES
 
 PART_WORDS = {
     "random": "scatter of the vectors",

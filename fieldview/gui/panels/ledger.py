@@ -18,11 +18,12 @@ from PySide6.QtWidgets import (
 )
 
 from fieldview.compute.units import Units
-from fieldview.gui import ledger_edits, wording
+from fieldview.gui import ledger_edits
 from fieldview.gui.forms import ModelForm
 from fieldview.gui.panels.base import Panel, label, set_property
 from fieldview.gui.panels.switch import Switch
 from fieldview.gui.picture import Picture
+from fieldview.publish import wording
 
 DRAG_PIXELS = 12
 

@@ -9,13 +9,13 @@ from PySide6.QtGui import QColor, QImage, QPainter, QPen
 from PySide6.QtWidgets import QComboBox, QHBoxLayout, QListView, QStyle, QStyledItemDelegate, QToolButton
 
 from fieldview.gui import theme as themes
-from fieldview.gui import wording
 from fieldview.gui.canvas.map_image import map_image
 from fieldview.gui.panels.base import Panel, label
 from fieldview.gui.picture import Card, Picture
 from fieldview.gui.pursuit import levels_of_values
 from fieldview.gui.theme import Theme
 from fieldview.gui.units_shown import UnitView
+from fieldview.publish import wording
 
 FIRST = ("speed", "vorticity", "divergence")
 SCHEME_WORDS = {

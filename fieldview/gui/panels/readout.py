@@ -10,11 +10,11 @@ from PySide6.QtGui import QColor
 from PySide6.QtWidgets import QTableView
 
 from fieldview.compute.field import Field, Status
-from fieldview.gui import wording
 from fieldview.gui.panels.base import Panel, label
 from fieldview.gui.panels.tables import Cell, CellModel, dense
 from fieldview.gui.picture import Picture
 from fieldview.gui.region_text import scaled
+from fieldview.publish import wording
 
 _STATUS_WORDS = {
     Status.MEASURED: "measured",

@@ -5,10 +5,11 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass
 
-from fieldview.gui import wording
 from fieldview.gui.panels.tables import Cell
 from fieldview.gui.picture import Picture
-from fieldview.gui.region_text import ENTRIES, Entry, figure, scaled
+from fieldview.gui.region_text import scaled
+from fieldview.publish import wording
+from fieldview.publish.region_numbers import ENTRIES, Entry, figure
 
 _BY_KEY = {entry.key: entry for entry in ENTRIES}
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from fieldview.gui.picture import Picture
-from fieldview.gui.region_text import figure
+from fieldview.publish.region_numbers import figure
 
 TRACE_KEYS = (("circulation",), ("line_integral",), ("through_flow",))
 

@@ -4,7 +4,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from fieldview.gui import wording
+from fieldview.publish import wording
 
 FINE = st.floats(min_value=1e-6, max_value=1e6)
 
