@@ -228,7 +228,7 @@ def run_statistics(
         No frame could be used, or ``frames`` names what is not a frame.
     """
     run, failure = RunStatistics(filled=filled, lags=lags), None
-    for frame in _numbers(bench, frames):
+    for frame in frame_numbers(bench, frames):
         try:
             field = bench.field(frame)
         except InputError as error:
@@ -246,7 +246,8 @@ def run_statistics(
     return run
 
 
-def _numbers(bench, frames) -> list[int]:
+def frame_numbers(bench, frames: Iterable[int] | str | None) -> list[int]:
+    """The numbers of the frames meant; InputError for any that is not a frame of the run itself."""
     chosen = bench.frames(frames) if frames is None or isinstance(frames, str) else list(frames)
     if not all(isinstance(frame, int | np.integer) for frame in chosen):
         raise InputError(f'frames "{frames}": statistics are made of frames by number, such as 0:100:5')
