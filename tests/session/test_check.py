@@ -17,7 +17,7 @@ from tests.session.runs import vortex_frames
 
 GRID = Grid(np.arange(24.0) * 16, np.arange(20.0) * 16)
 SIGMA = 0.1
-DISC = {"shape": "circle", "centre": [200, 160], "radius": 40}
+DISC = {"shape": "circle", "centre": [200, 160], "radius": 42}
 
 
 class FramesInMemory:
@@ -160,7 +160,7 @@ def test_shares_count_outliers_gaps_and_masks_apart():
     ]
     check = checked(swirl(change=spoil), ledger=ledger)
     look = check.frames[0]
-    inside = int((np.abs(GRID.nodes - (200 + 160j)) < 40).sum())
+    inside = int((np.abs(GRID.nodes - (200 + 160j)) < 42).sum())
     assert look.masked == inside and look.nodes == GRID.nodes.size - inside
     assert look.rejected == 1 and look.missing == 20 and look.measured == look.nodes - 21
     assert check.rejected[3, 4] == 1.0 and np.nansum(check.rejected > 0.5) == 1
