@@ -9,5 +9,5 @@ from fieldview.publish.tables import csv_lines
 def regions_csv(picture: Picture) -> str:
     """One row a region, as ``loopflux measure --format csv`` writes it."""
     rows = [m.row for r in picture.regions if (m := picture.measured_of(r)) is not None]
-    frame = {"frame": picture.shown.frame, "time": picture.shown.field.time, "regions": rows}
+    frame = {"frame": picture.shown.frame, "time": picture.field.time, "regions": rows}
     return "".join(f"{line}\n" for line in csv_lines([frame]))

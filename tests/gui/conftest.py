@@ -14,6 +14,7 @@ from PySide6.QtGui import QAction
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
 
+from fieldview.files.reading import Reading
 from fieldview.gui.app import create_window
 from fieldview.session.models import RunSource, Session, Uncertainties
 from fieldview.session.regions import Circle
@@ -69,7 +70,7 @@ def session_file(run_folder):
     session = Session(
         title="drifting vortex",
         units="m, s",
-        run=RunSource(files=("run/f*.csv",)),
+        run=RunSource(files=("run/f*.csv",), reading=Reading(y_axis="up", v_positive="up")),
         error_model=Uncertainties(sigma=0.002, correlation_nodes=1.0),
         ledger=(MedianTest(floor=0.01), Fill()),
         regions=(Circle(name="core", centre=(0.04, 0.03), radius=0.015),),

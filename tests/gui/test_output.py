@@ -103,7 +103,7 @@ def test_the_table_goes_to_the_clipboard_and_to_csv(window, qtbot, tmp_path):
 
 
 def test_csv_text_is_never_taken_for_a_formula():
-    from fieldview.gui.region_csv import plain_text
+    from fieldview.publish.tables import plain_text
 
     assert plain_text("=1+1") == "'=1+1"
     assert plain_text("core") == "core"

@@ -1,0 +1,295 @@
+"""Cleaned fields of a run, its region table and the record of what was done, in one folder.
+
+Everything stands under its final name only when it is whole. What is on the way lies in a folder of its own
+inside, so that a killed run goes on where it stopped and ends with the same bytes.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import json
+import shutil
+from collections import Counter
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import cached_property
+from pathlib import Path
+
+import fieldview
+from fieldview.compute.errors import InputError
+from fieldview.compute.field import Field, Status
+from fieldview.compute.quantities import QUANTITIES, quantity_map
+from fieldview.files.writing import write_whole
+from fieldview.publish.measuring import Progress
+from fieldview.publish.tables import csv_lines
+from fieldview.session.measure import chosen_frames, frame_row, unanswered
+from fieldview.session.replay import MEAN, Frame, Workbench
+from fieldview.session.store import dump_session, load_session
+
+FORMATS = ("csv", "nc", "npz")
+_UNFINISHED = ".unfinished"
+
+
+def apply_session(
+    path: Path,
+    folder: Path,
+    *,
+    frames: str | None = None,
+    to: str = "csv",
+    quantities: Sequence[str] = (),
+    progress: Progress,
+    say,
+) -> bool:
+    """Write the cleaned fields of a session's frames into a folder; True where there was anything to remark.
+
+    NAME_NNNNN.csv, .nc or .npz for each frame, ``regions.csv`` and ``record.json``. The same session goes on
+    in a folder where it was stopped; ``say`` is told every changed source, skipped frame and region without
+    an answer.
+
+    Raises InputError where the session, the run, the frames or the folder cannot be used; nothing is written
+    then.
+    """
+    if to not in FORMATS:
+        raise InputError(f"--to {to} is not known; use {', '.join(FORMATS)}")
+    for name in quantities:
+        if name not in QUANTITIES:
+            raise InputError(f'there is no quantity "{name}"; there are {", ".join(QUANTITIES)}')
+    bench = Workbench(load_session(path))
+    work = _Work(path, folder, bench, tuple(chosen_frames(bench, frames)), to, tuple(quantities))
+    remarks = bench.changed_sources()
+    # the first field tells whether the ledger and the quantities fit the run, before anything is written
+    _values(bench.field(work.frames[0]), work.quantities)
+    for sentence in remarks:
+        say(sentence)
+    finished = work.finished_remarks()
+    if finished is not None:
+        say(f"{folder}: everything is there already")
+        for sentence in finished:
+            say(sentence)
+        return bool(remarks or finished)
+    work.claim_folder()
+    for frame in progress(work.frames, "applying", len(work.frames)):
+        if not work.is_done(frame):
+            work.do(frame)
+    parts = [work.part(frame) for frame in work.frames]
+    for part in parts:
+        for sentence in part["remarks"]:
+            say(sentence)
+    if all(part["skipped"] for part in parts):
+        shutil.rmtree(work.unfinished)
+        raise InputError(parts[0]["remarks"][0])
+    work.finish(parts)
+    return bool(remarks) or any(part["remarks"] for part in parts)
+
+
+@dataclass(frozen=True, eq=False)
+class _Work:
+    """One application of a session to a folder."""
+
+    path: Path
+    folder: Path
+    bench: Workbench
+    frames: tuple[Frame, ...]
+    to: str
+    quantities: tuple[str, ...]
+
+    @property
+    def name(self) -> str:
+        return self.path.name.removesuffix(".json").removesuffix(".session")
+
+    @property
+    def unfinished(self) -> Path:
+        return self.folder / _UNFINISHED
+
+    @cached_property
+    def identity(self) -> str:
+        """Digest of everything the results depend on."""
+        told = {
+            "program": fieldview.__version__,
+            "session": dump_session(self.bench.session),
+            "sources": self.bench.run.digests(),
+            "frames": self.frames,
+            "to": self.to,
+            "quantities": self.quantities,
+        }
+        return "sha256:" + hashlib.sha256(json.dumps(told, sort_keys=True).encode()).hexdigest()
+
+    def claim_folder(self) -> None:
+        """Make the folder ours, or go on in it. InputError where it holds the results of something else."""
+        claimed = _text(self.unfinished / "identity") or _identity_in(_text(self.folder / "record.json"))
+        if claimed is None and any(self._taken()):
+            raise InputError(
+                f"{self.folder}: holds {next(self._taken())} already; choose another folder for --out"
+            )
+        if claimed is not None and claimed != self.identity:
+            raise InputError(
+                f"{self.folder}: holds the results of another session, other sources or other options; "
+                "choose another folder for --out"
+            )
+        try:
+            self.unfinished.mkdir(parents=True, exist_ok=True)
+            write_whole(self.unfinished / "identity", self.identity.encode())
+        except OSError as error:
+            raise InputError(
+                f"{self.folder}: cannot be written to ({error.strerror}); choose another folder"
+            ) from None
+
+    def finished_remarks(self) -> list[str] | None:
+        """The remarks of these very results where they are in the folder already, else None."""
+        text = _text(self.folder / "record.json")
+        if text is None or _identity_in(text) != self.identity:
+            return None
+        frames = json.loads(text)["frames"]
+        whole = all((self.folder / entry["file"]).is_file() for entry in frames if "file" in entry)
+        return [sentence for entry in frames for sentence in entry["remarks"]] if whole else None
+
+    def _taken(self):
+        """Names in the folder that the results would take."""
+        if self.folder.is_dir():
+            ours = (f"{self.name}_", "regions.csv", "record.json")
+            yield from (entry.name for entry in self.folder.iterdir() if entry.name.startswith(ours))
+        elif self.folder.exists():
+            raise InputError(f"{self.folder}: is a file; choose a folder for --out")
+
+    def field_name(self, frame: Frame) -> str:
+        number = frame if frame == MEAN else f"{frame:05d}"
+        return f"{self.name}_{number}.{self.to}"
+
+    def is_done(self, frame: Frame) -> bool:
+        """Whether a frame's part of the table is there, and its field unless it was skipped."""
+        text = _text(self._part_path(frame))
+        if text is None:
+            return False
+        return json.loads(text)["skipped"] or (self.folder / self.field_name(frame)).is_file()
+
+    def do(self, frame: Frame) -> None:
+        """Write one frame's field and its part of the table."""
+        try:
+            field = self.bench.field(frame)
+            row = frame_row(self.bench.session, frame, field)
+            tallies = [] if frame == MEAN else self.bench.tallies(frame)
+        except InputError as error:
+            if frame == MEAN:
+                raise
+            self._keep(frame, {"skipped": True, "remarks": [f"frame {frame} was skipped: {error}"]})
+            return
+        part = {
+            "skipped": False,
+            "remarks": [f'frame {frame}: "{name}" has no value' for name in unanswered(row)],
+            "row": row,
+            "ledger": [tally.counts for tally in tallies],
+            "outcomes": [tally.outcome for tally in tallies],
+            "status": {status.name.lower(): field.count(status) for status in Status},
+            "sigma": field.error.origin,
+        }
+        self._keep(frame, part)
+        attributes = {"session": self.path.name, "session_digest": _digest(dump_session(self.bench.session))}
+        if self.bench.session.title:
+            attributes["title"] = self.bench.session.title
+        writer = _writer(self.to)
+        writer(
+            self.folder / self.field_name(frame),
+            field,
+            quantities=_values(field, self.quantities),
+            attributes=attributes,
+        )
+
+    def _keep(self, frame: Frame, part: dict) -> None:
+        write_whole(self._part_path(frame), json.dumps(part, allow_nan=False).encode())
+
+    def part(self, frame: Frame) -> dict:
+        return json.loads(self._part_path(frame).read_text())
+
+    def _part_path(self, frame: Frame) -> Path:
+        return self.unfinished / f"{frame}.json"
+
+    def finish(self, parts: list[dict]) -> None:
+        """Write table and record, and clear away what was on the way."""
+        rows = [part["row"] for part in parts if not part["skipped"]]
+        if self.bench.session.regions:
+            table = "".join(f"{line}\n" for line in csv_lines(rows))
+            write_whole(self.folder / "regions.csv", table.encode())
+        record = json.dumps(self._record(parts), indent=1, ensure_ascii=False, allow_nan=False)
+        write_whole(self.folder / "record.json", (record + "\n").encode())
+        for scratch in self.folder.glob(f".{self.name}_*"):
+            scratch.unlink()  # left by a run that was killed while it wrote
+        shutil.rmtree(self.unfinished)
+
+    def _record(self, parts: list[dict]) -> dict:
+        """What was done: nothing in it depends on when, where or by whom."""
+        session, run = self.bench.session, self.bench.run
+        done = [part for part in parts if not part["skipped"]]
+        lines = self.bench.tallies(self.frames[0]) if self.frames[0] != MEAN else []
+        return {
+            "format": "loopflux-record",
+            "version": 1,
+            "identity": self.identity,
+            "program": f"loopflux {fieldview.__version__}",
+            "session": self.path.name,
+            "session_digest": _digest(dump_session(session)),
+            "sources": run.digests(),
+            "reading": {"units": str(run.units), "remarks": list(run.notes)},
+            "error_model": session.error_model.model_dump(mode="json", exclude_none=True),
+            "sigma": done[0]["sigma"],
+            "derivative": session.derivative,
+            "line": session.line,
+            "ledger": [
+                {"line": tally.line + 1, "sentence": tally.sentence, "counts": _totals(done, tally.line)}
+                for tally in lines
+            ],
+            "quantities": list(self.quantities),
+            "frames": [
+                {
+                    "frame": frame,
+                    "time": part["row"]["time"],
+                    "file": self.field_name(frame),
+                    "vectors": part["status"],
+                    "ledger": part["outcomes"],
+                    "remarks": part["remarks"],
+                }
+                if not part["skipped"]
+                else {"frame": frame, "remarks": part["remarks"]}
+                for frame, part in zip(self.frames, parts, strict=True)
+            ],
+        }
+
+
+def _totals(parts: list[dict], line: int) -> dict[str, int]:
+    total: Counter = Counter()
+    for part in parts:
+        total.update(part["ledger"][line])
+    return dict(total)
+
+
+def _values(field: Field, names: Sequence[str]) -> dict:
+    """Quantities and their uncertainties with units, by the names they are written under."""
+    values = {}
+    for name in names:
+        made = quantity_map(field, name)
+        values[name] = (made.values, made.unit)
+        if made.uncertainty is not None:
+            values[f"{name}_uncertainty"] = (made.uncertainty, made.unit)
+    return values
+
+
+def _writer(to: str):
+    from fieldview.files import delimited, netcdf, npz
+
+    return {"csv": delimited.write_csv, "nc": netcdf.write_netcdf, "npz": npz.write_npz}[to]
+
+
+def _text(path: Path) -> str | None:
+    return path.read_text() if path.is_file() else None
+
+
+def _identity_in(record: str | None) -> str | None:
+    if record is None:
+        return None
+    try:
+        return json.loads(record).get("identity", "unknown")
+    except (ValueError, AttributeError):
+        return "unknown"
+
+
+def _digest(text: str) -> str:
+    return "sha256:" + hashlib.sha256(text.encode()).hexdigest()

@@ -1,0 +1,91 @@
+"""The output of ``loopflux measure``: every region on every frame as a table, CSV or JSON."""
+
+from __future__ import annotations
+
+import json
+import tempfile
+from collections.abc import Callable, Iterable, Iterator
+from dataclasses import dataclass
+from pathlib import Path
+from typing import IO
+
+from fieldview.compute.errors import InputError
+from fieldview.publish.tables import csv_lines, text_lines
+from fieldview.session.measure import chosen_frames, measure_frames, unanswered
+from fieldview.session.replay import Workbench
+from fieldview.session.store import load_session
+
+Progress = Callable[[Iterable, str, int], Iterator]
+"""(frames, what is done, their number) -> the frames, shown as they pass."""
+
+
+@dataclass(frozen=True)
+class Measurement:
+    """A finished output: a text to be read from its start, and whether there was anything to remark."""
+
+    text: IO[str]
+    remarks: bool
+
+
+def measurement(path: Path, frames: str | None, format: str, *, progress: Progress, say) -> Measurement:
+    """Measure a session file; ``say`` is told every changed source, skipped frame and unanswered region.
+
+    The text is written to a scratch file as it comes, so that memory does not grow with the frames and
+    nothing comes out where the session turns out to be bad.
+
+    Raises InputError where the session, the run or the frames cannot be used.
+    """
+    session = load_session(path)
+    if not session.regions:
+        raise InputError(f"{path}: has no regions to measure; draw one in the window or add it under regions")
+    bench = Workbench(session)
+    chosen = chosen_frames(bench, frames)
+    said: list[str] = []
+
+    def remark(sentence: str) -> None:
+        said.append(sentence)
+        say(sentence)
+
+    for sentence in bench.changed_sources():
+        remark(sentence)
+    rows = measure_frames(
+        bench,
+        progress(chosen, "measuring", len(chosen)),
+        on_skip=lambda frame, error: remark(f"frame {frame} was skipped: {error}"),
+    )
+    text = tempfile.TemporaryFile("w+", encoding="utf-8", newline="")  # noqa: SIM115 - handed on
+    try:
+        for line in FORMATS[format](path.name, _watched(rows, remark)):
+            text.write(line + "\n")
+    except BaseException:
+        text.close()
+        raise
+    text.seek(0)
+    return Measurement(text, bool(said))
+
+
+def _watched(rows: Iterable[dict], remark: Callable[[str], None]) -> Iterator[dict]:
+    for row in rows:
+        for region in row["regions"]:
+            if region["name"] in unanswered({"regions": [region]}):
+                why = region["warnings"][0] if region["warnings"] else "no reason is known"
+                remark(f'frame {row["frame"]}: "{region["name"]}" has no value: {why}')
+        yield row
+
+
+def _json_lines(name: str, rows: Iterable[dict]) -> Iterator[str]:
+    yield f'{{"session": {json.dumps(name, ensure_ascii=False)}, "frames": ['
+    held = None
+    for row in rows:
+        if held is not None:
+            yield held + ","
+        held = json.dumps(row, ensure_ascii=False, allow_nan=False)
+    yield from [held] if held is not None else []
+    yield "]}"
+
+
+FORMATS: dict[str, Callable[[str, Iterable[dict]], Iterator[str]]] = {
+    "table": lambda name, rows: text_lines(rows),
+    "csv": lambda name, rows: csv_lines(rows),
+    "json": _json_lines,
+}
