@@ -18,7 +18,7 @@ from fieldview.compute.errors import InputError
 LAGS = 64
 """Lags of the window unless asked otherwise."""
 
-MOST_NODES = 4096
+MOST_NODES = 2048
 """Nodes at which the autocorrelation is found."""
 
 FEWEST_PAIRS = 8
@@ -51,8 +51,8 @@ class LagWindow:
         self._products, self._sums = np.zeros(size), np.zeros(size)
         self._pairs = np.zeros(size)
         self._head: list[np.ndarray] = []
-        # every frame is written twice, so that the last L of them always lie in one piece
-        self._ring = np.full((len(self.names), 2 * self.lags, nodes), np.nan)
+        # values and counts; every frame is written twice, so that the last L always lie in one piece
+        self._ring = np.zeros((2, len(self.names), 2 * self.lags, nodes))
 
     def add(self, parts: Mapping[str, np.ndarray]) -> None:
         """The next frame: component name to ndarray (n,), NaN where there is no value."""
@@ -65,12 +65,13 @@ class LagWindow:
             )
         values = values - self._origin
         place = self.frames % self.lags
-        past = self._ring[:, place : place + self.lags][:, ::-1]
-        self._count_in(slice(1, None), past, values[:, None])
-        self._count_in(slice(0, 1), values[:, None], values[:, None])
-        self._ring[:, place] = self._ring[:, place + self.lags] = values
+        past = self._ring[..., place : place + self.lags, :][..., ::-1, :]
+        now = _counted(values)
+        self._count_in(slice(1, None), past, now[..., None, :])
+        self._count_in(slice(0, 1), now[..., None, :], now[..., None, :])
+        self._ring[..., place, :] = self._ring[..., place + self.lags, :] = now
         if self.frames < self.lags:
-            self._head.append(values)
+            self._head.append(now)
         self.frames += 1
 
     def merge(self, later: LagWindow) -> None:
@@ -82,20 +83,20 @@ class LagWindow:
         if self._origin is None:
             self._origin = later._origin
         step = later._origin - self._origin
-        head = [frame + step for frame in later._head]
+        head = [_moved(frame, step) for frame in later._head]
         tail = self._tail()
         for back, old in enumerate(reversed(tail), start=1):
             for ahead, new in enumerate(head):
                 if back + ahead <= self.lags:
                     lag = slice(back + ahead, back + ahead + 1)
-                    self._count_in(lag, old[:, None], new[:, None])
-        step = step[:, None]
-        self._products += later._products + step * later._sums + step**2 * later._pairs
-        self._sums += later._sums + 2 * step * later._pairs
+                    self._count_in(lag, old[..., None, :], new[..., None, :])
+        wide = step[:, None]
+        self._products += later._products + wide * later._sums + wide**2 * later._pairs
+        self._sums += later._sums + 2 * wide * later._pairs
         self._pairs += later._pairs
         self._head = (self._head + head)[: self.lags]
         self.frames += later.frames
-        self._refill((tail + [frame + step[:, 0] for frame in later._tail()])[-self.lags :])
+        self._refill((tail + [_moved(frame, step) for frame in later._tail()])[-self.lags :])
 
     def correlation(self, means: Mapping[str, np.ndarray]) -> Correlation:
         """Autocorrelation about these means, component name to ndarray (n,)."""
@@ -112,24 +113,35 @@ class LagWindow:
         return Correlation(rho)
 
     def _count_in(self, lags: slice, old: np.ndarray, new: np.ndarray) -> None:
-        valid = np.isfinite(old) & np.isfinite(new)
-        first, second = np.where(valid, old, 0.0), np.where(valid, new, 0.0)
-        self._products[:, lags] += first * second
-        self._sums[:, lags] += first + second
-        self._pairs[:, lags] += valid
+        """Pairs of an earlier and a later frame, each as values and counts (2, C, lags, n)."""
+        self._products[:, lags] += old[0] * new[0]
+        self._sums[:, lags] += old[0] * new[1]
+        self._sums[:, lags] += old[1] * new[0]
+        self._pairs[:, lags] += old[1] * new[1]
 
     def _tail(self) -> list[np.ndarray]:
         """The last L frames, oldest first."""
         kept = min(self.frames, self.lags)
         place = self.frames % self.lags
-        ordered = self._ring[:, place : place + self.lags]
-        return [ordered[:, self.lags - kept + k].copy() for k in range(kept)]
+        ordered = self._ring[..., place : place + self.lags, :]
+        return [ordered[..., self.lags - kept + k, :].copy() for k in range(kept)]
 
     def _refill(self, tail: list[np.ndarray]) -> None:
         first = self.frames - len(tail)
-        for k, values in enumerate(tail):
+        for k, frame in enumerate(tail):
             place = (first + k) % self.lags
-            self._ring[:, place] = self._ring[:, place + self.lags] = values
+            self._ring[..., place, :] = self._ring[..., place + self.lags, :] = frame
+
+
+def _counted(values: np.ndarray) -> np.ndarray:
+    """Values with zeros where there are none, and their counts of one or zero: (2, C, n)."""
+    there = np.isfinite(values)
+    return np.stack([np.where(there, values, 0.0), there])
+
+
+def _moved(frame: np.ndarray, step: np.ndarray) -> np.ndarray:
+    """A counted frame about another origin."""
+    return np.stack([frame[0] + step * frame[1], frame[1]])
 
 
 class Correlation:
