@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import io
+import textwrap
 from collections.abc import Iterable, Iterator, Mapping
 
 from fieldview.publish import wording
@@ -92,9 +93,9 @@ def _region_lines(region: Mapping) -> Iterator[str]:
         )
         yield f"    {entry.symbol:<10} {shown:<34} {parts}".rstrip()
     if region.get("index") is not None:
-        yield f"    {'index':<10} {region['index']:+d}"
+        yield f"    {'index':<10} {region['index']}"
     for warning in region.get("warnings", ()):
-        yield f"    ! {warning}"
+        yield from textwrap.wrap(warning, 98, initial_indent="    ! ", subsequent_indent="      ")
 
 
 def _uncertainty(region: Mapping, entry: Entry) -> Mapping:
