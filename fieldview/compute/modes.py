@@ -22,12 +22,16 @@ _HIDDEN = 0.03
 """Share of the measured vectors that is hidden to find the number of modes for the gaps."""
 
 _MOST_GAP_MODES = 20
-_ROUNDS = 60
-_SETTLED = 1e-4
-"""Change of the filled values per round, relative to the fluctuation, at which filling ends."""
+_ROUNDS = 100
+_SETTLED = 2e-3
+"""Change of the filled values per round, relative to the fluctuation, at which filling ends: well below what
+noise leaves uncertain of them."""
 
 _PATIENCE = 2
 """Numbers of modes tried beyond the best one before the search ends."""
+
+_BETTER = 0.98
+"""Ratio of the errors of the hidden vectors from which more modes are worth it; fewer settle sooner."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -206,7 +210,7 @@ def _filled(values, known, gap_modes, seed, on_round):
     for modes in range(1, min(_MOST_GAP_MODES, known.shape[0] - 1) + 1):
         start, _ = _fill_with(values, known & ~hidden, modes, on_round, start=start)
         found = _hidden_error(start, values, hidden)
-        if found < error:
+        if found < _BETTER * error:
             best, error = modes, found
         elif modes - best >= _PATIENCE:
             break

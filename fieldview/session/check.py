@@ -265,7 +265,8 @@ class _Look:
             # with too few neighbours there is one way less; the finding says which ways there were
             with contextlib.suppress(InputError):
                 correlation = self._closely[0].error.correlation
-                levels["neighbours"] = estimate_sigma(self._closely, correlation=correlation)
+                found = estimate_sigma(self._closely, correlation=correlation)
+                levels["neighbours"] = {name: float(level) for name, level in found.items()}
         in_time = {name: self._in_time.level(name) for name in self.names}
         if any(level is not None for level in in_time.values()):
             levels["frames"] = {name: level for name, level in in_time.items() if level is not None}
