@@ -4,6 +4,7 @@ from importlib import import_module
 
 _HOME = {
     "Run": "run",
+    "UnreadableFrame": "run",
     "open_run": "run",
     "expand": "sources",
     "peek": "peeking",

@@ -46,6 +46,10 @@ def open_run(
     return Run(expand(patterns, folder), reading or Reading(), folder=folder)
 
 
+class UnreadableFrame(InputError):
+    """One frame's file cannot be read or does not fit the run; the other frames may be sound."""
+
+
 class Run:
     """Frames of one run, read when they are asked for; safe to use from several threads.
 
@@ -90,13 +94,16 @@ class Run:
         return self._ends[-1]
 
     def __getitem__(self, frame: int) -> Field:
-        """One frame in the program's units. InputError where its file cannot be read or has another grid."""
+        """One frame in the program's units. UnreadableFrame where its file is bad or has another grid."""
         if not 0 <= frame < len(self):
             raise IndexError(f"frame {frame} of {len(self)}")
         with self._lock:
             known = self._fields.get(frame)
             if known is None:
-                known = self._read(frame)
+                try:
+                    known = self._read(frame)
+                except InputError as error:
+                    raise UnreadableFrame(str(error)) from None
                 self._fields[frame] = known
                 while len(self._fields) > KEPT_FRAMES:
                     self._fields.popitem(last=False)

@@ -19,6 +19,7 @@ import fieldview
 from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field, Status
 from fieldview.compute.quantities import QUANTITIES, quantity_map
+from fieldview.files import UnreadableFrame
 from fieldview.files.writing import write_whole
 from fieldview.publish.measuring import Progress
 from fieldview.publish.tables import csv_lines
@@ -168,7 +169,7 @@ class _Work:
             field = self.bench.field(frame)
             row = frame_row(self.bench.session, frame, field)
             tallies = [] if frame == MEAN else self.bench.tallies(frame)
-        except InputError as error:
+        except UnreadableFrame as error:
             if frame == MEAN:
                 raise
             self._keep(frame, {"skipped": True, "remarks": [f"frame {frame} was skipped: {error}"]})

@@ -91,7 +91,7 @@ def _region_lines(region: Mapping) -> Iterator[str]:
             for part in PARTS[:-1]
             if number.uncertainty is not None and spread.get(part) is not None
         )
-        yield f"    {entry.symbol:<10} {shown:<34} {parts}".rstrip()
+        yield f"    {entry.symbol:<10} {shown:<32} {parts}".rstrip()
     if region.get("index") is not None:
         yield f"    {'index':<10} {region['index']}"
     for warning in region.get("warnings", ()):

@@ -8,6 +8,7 @@ from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field
 from fieldview.compute.numbers import Number
 from fieldview.compute.region import RegionNumbers, measure_region, prepare
+from fieldview.files import UnreadableFrame
 from fieldview.session.models import Session
 from fieldview.session.regions import Region
 from fieldview.session.replay import MEAN, Frame, Workbench
@@ -73,7 +74,7 @@ def measure_frames(
     for frame in frames:
         try:
             row = frame_row(bench.session, frame, bench.field(frame))
-        except InputError as error:
+        except UnreadableFrame as error:
             if on_skip is None or frame == MEAN:
                 raise
             on_skip(frame, error)

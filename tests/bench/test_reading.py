@@ -1,4 +1,4 @@
-"""Reading a million-row text file into a Field, as a multiple of pandas reading the same file, interleaved."""
+"""Reading a million-row text file into a Field, as a multiple of pandas reading it, interleaved."""
 
 from time import perf_counter
 

@@ -1,4 +1,4 @@
-"""One vortex in a stirred tank, displacements in pixels with a calibration. Invented; there is no such tank."""
+"""One vortex in a stirred tank, displacements in pixels with a calibration. Invented; no such tank exists."""
 
 from __future__ import annotations
 
