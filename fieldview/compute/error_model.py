@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, fields
 from types import MappingProxyType
 
 import numpy as np
@@ -68,6 +68,11 @@ class ErrorModel:
     def __post_init__(self):
         if self.sigma is not None:
             object.__setattr__(self, "sigma", MappingProxyType(dict(self.sigma)))
+
+    def __reduce__(self):
+        # its read-only mappings cannot be pickled as they are; made anew, it is frozen again
+        values = (getattr(self, entry.name) for entry in fields(self))
+        return type(self), tuple(dict(v) if isinstance(v, Mapping) else v for v in values)
 
     def sigma_of(self, component: str, shape: tuple[int, int]) -> np.ndarray | None:
         """Standard uncertainty of one component at every node, ndarray (ny, nx), or None if unknown."""

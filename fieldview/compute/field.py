@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field, fields, replace
 from enum import IntEnum
 from types import MappingProxyType
 
@@ -124,6 +124,11 @@ class Field:
         for name in ("measured", "channels"):
             arrays = {key: _frozen(np.asarray(value, float)) for key, value in getattr(self, name).items()}
             object.__setattr__(self, name, MappingProxyType(arrays))
+
+    def __reduce__(self):
+        # its read-only mappings cannot be pickled as they are; made anew, it is frozen again
+        values = (getattr(self, entry.name) for entry in fields(self))
+        return type(self), tuple(dict(v) if isinstance(v, Mapping) else v for v in values)
 
     def _array(self, name: str) -> np.ndarray:
         values = np.asarray(getattr(self, name), float)

@@ -24,6 +24,9 @@ MOST_NODES = 2048
 FEWEST_PAIRS = 8
 """Pairs of samples below which a lag is not used."""
 
+_MOST_BIAS = 0.2
+"""Largest correction; with fewer than five independent samples there is nothing to be mended."""
+
 
 class LagWindow:
     """Sums for the autocovariance of each component at some nodes, frames in order of time.
@@ -85,11 +88,10 @@ class LagWindow:
         step = later._origin - self._origin
         head = [_moved(frame, step) for frame in later._head]
         tail = self._tail()
+        ahead = np.stack(head, axis=2)
         for back, old in enumerate(reversed(tail), start=1):
-            for ahead, new in enumerate(head):
-                if back + ahead <= self.lags:
-                    lag = slice(back + ahead, back + ahead + 1)
-                    self._count_in(lag, old[..., None, :], new[..., None, :])
+            reach = min(self.lags - back + 1, len(head))
+            self._count_in(slice(back, back + reach), old[..., None, :], ahead[..., :reach, :])
         wide = step[:, None]
         self._products += later._products + wide * later._sums + wide**2 * later._pairs
         self._sums += later._sums + 2 * wide * later._pairs
@@ -164,6 +166,22 @@ class Correlation:
             for name, part in self.rho.items()
         }
 
+    def corrected(self, counts: np.ndarray) -> Correlation:
+        """The same with most of its bias taken off: every rho is too low by about 1 / N_eff.
+
+        Parameters
+        ----------
+        counts : ndarray (n,)
+            Samples N of each node.
+
+        Source: Marriott & Pope (1954) Biometrika 41:390-402 (from memory), to first order.
+        """
+        corrected = {}
+        for name, rho in self.rho.items():
+            lost = np.minimum(self.inflation(name) / np.maximum(counts, 1), _MOST_BIAS)
+            corrected[name] = (rho + lost) / (1 + lost)
+        return Correlation(corrected)
+
     def known(self, name: str) -> np.ndarray:
         """bool (n,): nodes with enough pairs for the first lag."""
         return np.isfinite(self.rho[name][:2]).all(axis=0)
@@ -212,11 +230,25 @@ class Thinning:
         return values[self._rows[:, None], self._columns].reshape(-1)
 
     def spread(self, values: np.ndarray) -> np.ndarray:
-        """A map (ny, nx) with each node's value taken from the nearest chosen one; NaN takes the median."""
-        known = values[np.isfinite(values)]
-        filled = np.where(np.isfinite(values), values, np.median(known) if known.size else np.nan)
+        """A map (ny, nx): each node takes the mean over the nearest chosen node and its eight neighbours.
+
+        Single nodes scatter much more than the map changes from one to the next. Those without a value are
+        left out of the means; where all nine are, the median of the map stands in.
+        """
+        table = values.reshape(self._rows.size, self._columns.size)
+        known = np.isfinite(table)
+        total, number = (_of_nine(part) for part in (np.where(known, table, 0.0), known.astype(float)))
+        middle = np.median(table[known]) if known.any() else np.nan
+        smooth = np.where(number > 0, total / np.maximum(number, 1), middle)
         rows, columns = (
             np.clip(np.arange(n) // self.step, 0, chosen.size - 1)
             for n, chosen in zip(self.shape, (self._rows, self._columns), strict=True)
         )
-        return filled.reshape(self._rows.size, self._columns.size)[rows[:, None], columns]
+        return smooth[rows[:, None], columns]
+
+
+def _of_nine(values: np.ndarray) -> np.ndarray:
+    """Sum over each node and its neighbours."""
+    framed = np.pad(values, 1)
+    rows = framed[:-2] + framed[1:-1] + framed[2:]
+    return rows[:, :-2] + rows[:, 1:-1] + rows[:, 2:]

@@ -12,6 +12,11 @@ from fieldview.compute.lag_window import LAGS, Correlation, LagWindow, Thinning
 from fieldview.compute.moments import Moments
 from fieldview.compute.units import Units
 
+FEW_SAMPLES = 10
+"""Independent samples below which an uncertainty made of them is hardly one."""
+
+_NOISE_OFF = "variance of the random errors taken off; how uncertain sigma is itself is not included"
+
 
 @dataclass(frozen=True, eq=False)
 class StatisticMap:
@@ -76,9 +81,9 @@ class FrameStatistics:
         self.lag_window.merge(later.lag_window)
 
     def correlation(self) -> Correlation:
-        return self.lag_window.correlation(
-            {name: self.thinning.thin(self.moments.mean(name)) for name in self.names}
-        )
+        """Autocorrelation at the chosen nodes, most of the bias of a finite run taken off."""
+        means = {name: self.thinning.thin(self.moments.mean(name)) for name in self.names}
+        return self.lag_window.correlation(means).corrected(self.thinning.thin(self.moments.count))
 
 
 def statistic_maps(
@@ -149,10 +154,18 @@ class _Worth:
         if not known.any():
             return ("too few frames to tell how far they are correlated: no uncertainty",)
         ends = np.logical_and.reduce([self._correlation.falls_to_zero(name) for name in names])
-        open_share = 1 - ends[known].mean()
+        said, open_share = (), 1 - ends[known].mean()
+        some = self._run.moments.count > 1
+        few = np.mean(self.samples(*names)[some] < FEW_SAMPLES) if some.any() else 0.0
+        if few > 0:
+            said += (
+                f"at {100 * few:.1f} % of the nodes there are fewer than {FEW_SAMPLES} independent samples: "
+                "the uncertainty there is itself uncertain by half and more",
+            )
         if open_share == 0:
-            return ()
+            return said
         return (
+            *said,
             f"at {100 * open_share:.1f} % of the nodes the autocorrelation does not fall to zero within "
             f"{self._run.lag_window.lags} frames: the uncertainty there is a lower bound",
         )
@@ -191,7 +204,7 @@ def _of_component(run, worth, name, noise, interval):
 def _without_noise(deviation, noise):
     square = deviation**2 - noise
     below = int(np.count_nonzero(square < 0))
-    remarks = ("variance of the random errors taken off",)
+    remarks = (_NOISE_OFF,)
     if below:
         remarks += (
             f"at {below} nodes the stated noise is larger than the whole fluctuation: no value there",
@@ -209,7 +222,7 @@ def _stress(run, worth, first, second, noise):
         # kept where it comes out negative: cutting it off would bias every mean over nodes
         values = values - noise[first]
         below = int(np.count_nonzero(values < 0))
-        remarks += ("variance of the random errors taken off",)
+        remarks += (_NOISE_OFF,)
         if below:
             remarks += (f"negative at {below} nodes: the stated noise is larger than the fluctuation there",)
     title = f"Reynolds stress {first}′{second}′"

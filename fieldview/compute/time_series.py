@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from fieldview.compute.errors import InputError
+from fieldview.compute.lag_window import Correlation
 
 FEWEST_SAMPLES = 8
 
@@ -31,16 +32,17 @@ class Autocorrelation:
 
     @property
     def integral_scale(self) -> float:
-        """1/2 + sum of rho up to its first zero: the integral time scale. [samples]"""
-        return 0.5 + self._sum(1)
+        """1/2 + sum of rho up to its first zero, its bias taken off: the integral time scale. [samples]"""
+        return 0.5 * self._inflation(1)
 
     def effective_number(self, count: int, *, power: int = 1) -> float:
         """N_eff of so many samples, for their mean (power 1) or their variance (power 2)."""
-        return count / (1 + 2 * self._sum(power))
+        return count / self._inflation(power)
 
-    def _sum(self, power: int) -> float:
-        end = self.rho.size if self.zero is None else self.zero
-        return float(np.nansum(self.rho[1:end] ** power))
+    def _inflation(self, power: int) -> float:
+        # the same rules as for the maps of a run
+        found = Correlation({"": self.rho[:, None]}).corrected(np.array([self.pairs[0]]))
+        return float(found.inflation(*("",) * power)[0])
 
 
 def autocorrelation(values: np.ndarray, lags: int | None = None, *, biased: bool = False) -> Autocorrelation:

@@ -19,6 +19,9 @@ from fieldview.compute.quantities import quantity_map
 from fieldview.compute.statistics import FrameStatistics, StatisticMap, statistic_maps
 from fieldview.session.clock import Clock
 
+STRETCH = 128
+"""Frames of a stretch. Always the same, so that the last digit does not depend on how many share the work."""
+
 
 class RunStatistics:
     """Statistics of the frames added so far, all on one grid.
@@ -66,7 +69,7 @@ class RunStatistics:
             self._sums.add({name: np.full(self._masked.shape, np.nan) for name in self._sums.names})
 
     def merge(self, later: RunStatistics) -> None:
-        """The statistics of the stretch of the run that follows directly."""
+        """The statistics of the stretch of the run that follows directly; ``later`` is used up."""
         if (later.filled, later.lags) != (self.filled, self.lags):
             raise InputError("statistics made with other choices cannot be merged")
         if later._first is None:
@@ -74,7 +77,9 @@ class RunStatistics:
                 self.skip()
             return
         if self._first is None:
-            self.__dict__.update(later.__dict__, skipped=self.skipped + later.skipped)
+            self.clock.merge(later.clock)
+            before = {"clock": self.clock, "skipped": self.skipped + later.skipped}
+            self.__dict__.update(later.__dict__, **before, _leading=self._leading + later._leading)
             return
         for _ in range(later._leading):
             self._sums.add({name: np.full(self._masked.shape, np.nan) for name in self._sums.names})
@@ -227,22 +232,50 @@ def run_statistics(
     InputError
         No frame could be used, or ``frames`` names what is not a frame.
     """
-    run, failure = RunStatistics(filled=filled, lags=lags), None
-    for frame in frame_numbers(bench, frames):
+    numbers = frame_numbers(bench, frames)
+    run, failures = RunStatistics(filled=filled, lags=lags), []
+
+    def skip(frame: int, error: InputError) -> None:
+        if on_skip is None:
+            raise error
+        on_skip(frame, error)
+        failures.append(error)
+
+    for stretch in stretches(numbers):
+        run.merge(
+            stretch_statistics(bench, stretch, filled=filled, lags=lags, on_skip=skip, on_frame=on_frame)
+        )
+    if failures and not run.frames:
+        raise failures[-1]
+    return run
+
+
+def stretches(numbers: list[int]) -> list[list[int]]:
+    """Frames in the stretches that statistics are made of, whoever makes them."""
+    return [numbers[start : start + STRETCH] for start in range(0, len(numbers), STRETCH)]
+
+
+def stretch_statistics(
+    bench,
+    numbers: Iterable[int],
+    *,
+    filled: bool,
+    lags: int,
+    on_skip: Callable[[int, InputError], None],
+    on_frame: Callable[[int], None] | None = None,
+) -> RunStatistics:
+    """Statistics of one stretch of frames: the piece of work that a run is shared out in."""
+    run = RunStatistics(filled=filled, lags=lags)
+    for frame in numbers:
         try:
             field = bench.field(frame)
         except InputError as error:
-            if on_skip is None:
-                raise
             on_skip(frame, error)
             run.skip()
-            failure = error
         else:
             run.add(field)
         if on_frame is not None:
             on_frame(frame)
-    if failure is not None and not run.frames:
-        raise failure
     return run
 
 

@@ -1,6 +1,8 @@
 """Statistics of a run through the ledger: the same mean, gaps left out, uncertainties that hold."""
 
 import json
+import pickle
+import tracemalloc
 
 import numpy as np
 import pytest
@@ -10,6 +12,7 @@ from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field, Status
 from fieldview.compute.grid import Grid
 from fieldview.compute.smoothing import smoothing_map
+from fieldview.session import statistics
 from fieldview.session.mean import mean_of
 from fieldview.session.replay import Workbench
 from fieldview.session.statistics import RunStatistics, derived_field, run_statistics, statistics_of
@@ -64,6 +67,34 @@ def test_statistics_of_a_known_field_lie_within_their_uncertainty():
     }
     for name, ratio in deviations(run, truth).items():
         assert 0.8 <= ratio <= 1.2, name
+
+
+@pytest.mark.parametrize("count", [60, 200])
+def test_a_short_run_has_hardly_smaller_uncertainties_than_it_should(count):
+    """Some seven and twenty-two independent samples: few, and their number is itself estimated."""
+    run = statistics_of(turbulent_run(np.random.default_rng(count), count))
+    truth = {"mean_u": 1.0, "std_u": np.sqrt(0.09 + SIGMA**2), "reynolds_uv": -0.03, "tke": 0.065 + SIGMA**2}
+    for name, ratio in deviations(run, truth).items():
+        assert 0.7 <= ratio <= 1.5, name
+    few = any("fewer than 10 independent samples" in remark for remark in run.maps()["mean_u"].remarks)
+    assert few == (count == 60)
+
+
+def test_memory_does_not_grow_with_the_frames():
+    def peak(count):
+        rng = np.random.default_rng(11)
+        error = ErrorModel(sigma={"u": SIGMA, "v": SIGMA}, origin="given")
+        tracemalloc.start()
+        run = RunStatistics(lags=16)
+        for _ in range(count):
+            u, v = rng.normal(size=(2, 40, 50))
+            run.add(Field(Grid(np.arange(50.0), np.arange(40.0)), u=u, v=v, error=error))
+        run.maps()
+        found = tracemalloc.get_traced_memory()[1]
+        tracemalloc.stop()
+        return found
+
+    assert peak(200) < 1.02 * peak(20)
 
 
 def test_noise_is_taken_off_the_stresses():
@@ -225,3 +256,25 @@ def test_a_bad_frame_is_skipped_if_it_is_told(tmp_path):
 def test_no_frames_have_no_statistics():
     with pytest.raises(InputError, match="no frames to take a mean of"):
         RunStatistics().maps()
+
+
+def test_a_run_in_stretches_is_the_same_to_the_last_bit_whoever_makes_them(monkeypatch, tmp_path):
+    monkeypatch.setattr(statistics, "STRETCH", 4)
+    bench = Workbench(
+        edited(vortex_frames(tmp_path / "run", 11), error_model={"sigma": 0.004, "correlation_nodes": 1})
+    )
+    whole = run_statistics(bench, lags=5)
+    pieces = [
+        statistics.stretch_statistics(bench, numbers, filled=False, lags=5, on_skip=None)
+        for numbers in reversed(statistics.stretches(list(range(11))))
+    ]
+    assert [piece.frames for piece in pieces] == [3, 4, 4]
+    merged = RunStatistics(lags=5)
+    for piece in reversed(pieces):
+        merged.merge(pickle.loads(pickle.dumps(piece)))
+    for name, entry in whole.maps(subtract_noise=True).items():
+        other = merged.maps(subtract_noise=True)[name]
+        assert np.array_equal(other.values, entry.values, equal_nan=True), name
+    assert merged.rows() == whole.rows()
+    straight = statistics_of([bench.field(number) for number in range(11)], lags=5)
+    np.testing.assert_allclose(straight.maps()["tke"].values, whole.maps()["tke"].values, rtol=1e-12)
