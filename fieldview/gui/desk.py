@@ -15,7 +15,8 @@ from PySide6.QtCore import QObject, QTimer, Signal
 from fieldview.compute.errors import InputError
 from fieldview.gui import work
 from fieldview.gui.jobs import LATER, Answer, Jobs
-from fieldview.gui.picture import NOTHING, Notice, Picture, Shown
+from fieldview.gui.kept_view import shown_from_view, view_from_shown
+from fieldview.gui.picture import NOTHING, Notice, Picture
 from fieldview.gui.pursuit import Pursuit
 from fieldview.session.models import Session
 from fieldview.session.undo import History
@@ -261,7 +262,7 @@ class Desk(QObject):
         session = opened.session.in_folder(self.picture.session.folder)
         saved = session if self.picture.saved is not None else None
         picture = self.picture.showing(frame=frame)
-        notice = Notice(opened.facts.notes[0], grave=False) if opened.facts.notes else None
+        notice = _said_on_opening(opened.facts.notes) if self.picture.path is None else None
         self._put(picture.with_(history=History(session), saved=saved, run=opened.facts, notice=notice))
         if session.run.digests:
             self.jobs.submit("digests", work.changed_sources, opened.bench, lane="digests", urgency=LATER)
@@ -278,6 +279,20 @@ class Desk(QObject):
         if answer.kind == "save":
             self.after_saving = None
         self.complain(answer.error)
+
+    def cancel(self, kind: str) -> None:
+        """Stop background work; what it was for is taken back, so that the window shows what is so."""
+        self.jobs.cancel(kind)
+        picture = self.picture
+        if kind == "open":
+            self._put(Picture(shown=picture.shown))
+        elif kind == "field" and picture.shown.source != "frame":
+            self.show(source="frame")
+        elif kind == "field" and picture.field is not None:
+            if picture.field_frame != picture.shown.frame:
+                self.show(frame=picture.field_frame)
+            else:
+                self.undo()
 
     def _tasks_changed(self) -> None:
         self._put(self.picture.with_(tasks=self.jobs.tasks), pursue=False, soon=True)
@@ -313,48 +328,14 @@ def plain(error: ValidationError) -> str:
     return f"{place}: {message}" if place else message
 
 
-_KEPT = (
-    "frame",
-    "quantity",
-    "iso_lines",
-    "arrow_colour",
-    "rejected_arrows",
-    "coverage",
-    "arrow_stretch",
-    "units",
-)
-
-
-def view_from_shown(shown: Shown) -> dict:
-    """What is worth keeping of how the session was looked at."""
-    view = {name: getattr(shown, name) for name in _KEPT if getattr(shown, name) != getattr(Shown(), name)}
-    if shown.levels:
-        view["levels"] = {name: list(levels) for name, levels in sorted(shown.levels.items())}
-    if shown.speed:
-        view["speed"] = shown.speed
-    return view
-
-
-def shown_from_view(view: dict, before: Shown) -> Shown:
-    """How a session is looked at first: as it was saved, else in the usual way; the tool stays in hand."""
-    kinds = {name: type(getattr(Shown(), name)) for name in _KEPT}
-    taken = {}
-    for name, kind in kinds.items():
-        value = view.get(name)
-        if isinstance(value, kind if kind is not type(None) else str) or (
-            kind is float and isinstance(value, int)
-        ):
-            taken[name] = value
-    levels = view.get("levels")
-    if isinstance(levels, dict):
-        taken["levels"] = {
-            str(name): (float(pair[0]), float(pair[1]))
-            for name, pair in levels.items()
-            if isinstance(pair, list) and len(pair) == 2 and all(isinstance(n, int | float) for n in pair)
-        }
-    if isinstance(view.get("speed"), int | float):
-        taken["speed"] = float(view["speed"])
-    return Shown(tool=before.tool, **taken)
+def _said_on_opening(notes: tuple[str, ...]) -> Notice | None:
+    """What reading had to assume, for files opened without a session; the ledger's first line keeps it."""
+    if not notes:
+        return None
+    sentences = [f"{note[:1].upper()}{note[1:].rstrip('.')}." for note in notes[:3]]
+    more = [f"{len(notes) - 3} more remarks stand in the ledger's first line."] if len(notes) > 3 else []
+    offers = (("How the files are read …", "sheet.reading"),)
+    return Notice(" ".join([*sentences, *more]), grave=False, offers=offers)
 
 
 def _still_there(picture: Picture) -> Picture:

@@ -25,7 +25,9 @@ SOON, LATER = 0, 1
 
 @dataclass(frozen=True, eq=False)
 class Request:
-    """What is to be done. ``work(*given)`` must not touch the window or shared state."""
+    """What is to be done. ``work(*given)`` must not touch the window or shared state; one that ``reports`` is
+    given one thing more: a function to be told the share done (0 to 1), which ends it once it is cancelled.
+    """
 
     id: int
     kind: str
@@ -34,7 +36,12 @@ class Request:
     urgency: int = SOON
     lane: str = "run"
     title: str = ""
+    reports: bool = False
     cancelled: threading.Event = field(default_factory=threading.Event)
+
+
+class Cancelled(Exception):
+    """Ends work in the middle; nobody waits for its answer any more."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -90,12 +97,13 @@ class Jobs(QObject):
         urgency: int = SOON,
         lane: str = "run",
         title: str = "",
+        reports: bool = False,
     ) -> int:
         """Ask for ``work(*given)`` in the background; returns the request's id, 0 after closing."""
         if self._closed:
             return 0
         self._drop(kind)
-        request = Request(next(self._ids), kind, work, given, urgency, lane, title)
+        request = Request(next(self._ids), kind, work, given, urgency, lane, title, reports)
         self._pending[kind] = (request, Task(kind, title, time.monotonic()))
         if lane not in self._lanes:
             self._lanes[lane] = _Lane(lane, self._arrived.emit)
@@ -196,7 +204,8 @@ class _Lane:
         """One answer further; the iterator of those to come, or None at the end."""
         try:
             if answers is None:
-                result = request.work(*request.given)
+                report = (self._reporter(request),) if request.reports else ()
+                result = request.work(*request.given, *report)
                 if not isinstance(result, GeneratorType):
                     self._tell(Answer(request.id, request.kind, result, last=True))
                     return None
@@ -205,6 +214,8 @@ class _Lane:
             return answers
         except StopIteration:
             self._tell(Answer(request.id, request.kind, None, last=True))
+        except Cancelled:
+            return None
         except InputError as error:
             questions = tuple(getattr(error, "questions", ()))
             self._tell(
@@ -218,6 +229,14 @@ class _Lane:
             text = f"{request.title or request.kind} failed ({what}); undo the last change"
             self._tell(Answer(request.id, request.kind, None, True, text, failed=True))
         return None
+
+    def _reporter(self, request: Request) -> Callable[[float], None]:
+        def report(share: float) -> None:
+            if request.cancelled.is_set():
+                raise Cancelled
+            self._tell(Answer(request.id, request.kind, Progress(share)))
+
+        return report
 
     def _tell(self, answer: Answer) -> None:
         try:

@@ -27,7 +27,7 @@ class Shown:
 
     Attributes
     ----------
-    source : "frame" or "mean"
+    source : "frame", "mean" or "fluctuation" (the frame less the mean)
     as_of : int or None
         Number of ledger lines that are applied; None is all.
     levels : mapping of quantity name to (low, high)
@@ -38,6 +38,8 @@ class Shown:
         Factor k by which uncertainties are multiplied for showing.
     units : "session", "mm" or "reference"
         What numbers are shown in.
+    trace : "circulation" or "flux"
+        Which number of the chosen region is drawn over time.
     """
 
     frame: int = 0
@@ -56,6 +58,7 @@ class Shown:
     coverage: float = 1.0
     units: str = "session"
     drawer: str = "growth"
+    trace: str = "circulation"
 
 
 @dataclass(frozen=True, eq=False)

@@ -21,9 +21,12 @@ class Pursuit:
         self._desk = desk
         self._keys: dict[str, object] = {}
         self._share_parts: tuple | None = None
+        self._run_key: tuple | None = None
+        self._whole_run: tuple = (None, None)
 
     def forget(self) -> None:
         self._keys.clear()
+        self._whole_run = (None, None)
 
     def pursue(self) -> None:
         picture = self._desk.picture
@@ -47,8 +50,12 @@ class Pursuit:
 
     def _field(self, picture: Picture) -> None:
         shown, session = picture.shown, picture.session
-        key = (field_parts(session), shown.frame, shown.source, shown.as_of)
+        of_frame = None if shown.source == "mean" else shown.frame
+        key = (field_parts(session), of_frame, shown.source, shown.as_of)
         if self._changed("field", key):
+            self._run_key = (field_parts(session), shown.source, shown.as_of)
+            known = self._whole_run[1] if self._whole_run[0] == self._run_key else None
+            over_run = shown.source != "frame" and known is None
             self._desk.jobs.submit(
                 "field",
                 work.evaluate,
@@ -58,7 +65,9 @@ class Pursuit:
                 shown.source,
                 shown.as_of,
                 shown.quantity,
-                title=f"Evaluating frame {shown.frame + 1}",
+                known,
+                title="Going through the run" if over_run else f"Evaluating frame {shown.frame + 1}",
+                reports=True,
             )
 
     def _numbers(self, picture: Picture) -> None:
@@ -124,6 +133,8 @@ class Pursuit:
 
     def _got_field(self, got: work.Evaluated) -> None:
         self._desk.bench = got.bench
+        if got.whole_run is not None:
+            self._whole_run = (self._run_key, got.whole_run)
         picture = self._desk.picture
         parts = field_parts(picture.session)
         shares = picture.shares if parts == self._share_parts else {}

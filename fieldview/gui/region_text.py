@@ -8,9 +8,6 @@ from fieldview.gui.units_shown import UnitView
 from fieldview.publish import wording
 from fieldview.publish.region_numbers import ENTRIES, figure
 
-TRACE_SYMBOLS = {"line": "∫u·dl"}
-"""What is followed over time where it is not Γ."""
-
 
 def label_lines(
     row: Mapping, *, coverage: float, full: bool, view: UnitView = UnitView()

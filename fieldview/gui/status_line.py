@@ -14,7 +14,7 @@ from fieldview.publish import wording
 PATIENCE = 1.0
 """Seconds after which work shows its progress."""
 
-CANCELLABLE = ("follow", "export", "cards")
+CANCELLABLE = ("open", "field", "follow", "export", "cards")
 
 
 class StatusLine(QStatusBar):
@@ -103,18 +103,19 @@ class _Work(QWidget):
 
     def _cancel(self):
         if self._task is not None:
-            self._desk.jobs.cancel(self._task.kind)
+            self._desk.cancel(self._task.kind)
 
 
 def frame_text(picture: Picture) -> str:
     run, shown = picture.run, picture.shown
     if run is None:
         return ""
-    if shown.source != "frame":
-        return f"{shown.source} of {run.frames:,} frames"
+    if shown.source == "mean":
+        return f"mean of {run.frames:,} frames"
     time_of = run.times[shown.frame] if shown.frame < len(run.times) else None
     clock = f" · t = {time_of:.3f} s" if time_of is not None else ""
-    return f"frame {shown.frame + 1:,} of {run.frames:,}{clock}"
+    less = " less the mean" if shown.source == "fluctuation" else ""
+    return f"frame {shown.frame + 1:,} of {run.frames:,}{less}{clock}"
 
 
 def share_text(picture: Picture) -> str:

@@ -8,7 +8,11 @@ from fieldview.gui.theme import FONT_PIXELS, SMALL_PIXELS, Theme
 def style_sheet(theme: Theme, chevron: str) -> str:
     """The style sheet; ``chevron`` is the path of the drawing for combo boxes."""
     return _SHEET.format(
-        **{name: getattr(theme, name) for name in Theme.__dataclass_fields__ if name != "unsigned_part"},
+        **{
+            name: getattr(theme, name)
+            for name in Theme.__dataclass_fields__
+            if not name.endswith(("_part", "_map"))
+        },
         px=FONT_PIXELS,
         small=SMALL_PIXELS,
         chevron=chevron,

@@ -39,7 +39,7 @@ class Theme:
     hairline: str
     chosen: str
     entry: str
-    signed_map: str
+    signed_map: tuple[str, str, str]
     unsigned_map: str
     unsigned_part: tuple[float, float]
     cyclic_map: str = "CET-CBC1"
@@ -66,7 +66,7 @@ LIGHT = Theme(
     hairline="#d5dbe2",
     chosen="#dcefed",
     entry="#ffffff",
-    signed_map="CET-D1",
+    signed_map=("#1f5a96", "#f7f5f1", "#9c4613"),
     unsigned_map="CET-L12",
     unsigned_part=(0.0, 1.0),
 )
@@ -83,7 +83,7 @@ DARK = Theme(
     hairline="#2e3a4a",
     chosen="#1f3b41",
     entry="#10161f",
-    signed_map="CET-D4",
+    signed_map=("#5b9be0", "#161c26", "#e0793a"),
     unsigned_map="CET-CBL1",
     unsigned_part=(0.04, 0.6),
 )
@@ -109,9 +109,46 @@ def colour_table(theme: Theme, kind: str) -> np.ndarray:
     """256 colours of a map: uint8 ndarray (256, 3); kind is "signed", "unsigned" or "cyclic"."""
     import pyqtgraph as pg
 
-    name = {"signed": theme.signed_map, "unsigned": theme.unsigned_map, "cyclic": theme.cyclic_map}[kind]
+    if kind == "signed":
+        return diverging(*theme.signed_map)
+    name = {"unsigned": theme.unsigned_map, "cyclic": theme.cyclic_map}[kind]
     low, high = theme.unsigned_part if kind == "unsigned" else (0.0, 1.0)
     return pg.colormap.get(name).getLookupTable(start=low, stop=high, nPts=256)[:, :3].astype(np.uint8)
+
+
+def diverging(low: str, middle: str, high: str) -> np.ndarray:
+    """256 colours from ``low`` over ``middle`` to ``high``, in even steps of CIE L*a*b* along both arms."""
+    ends = [_to_lab(colour) for colour in (low, middle, high)]
+    # both arms reach the same lightness, so that neither sign looks stronger
+    ends[0][0] = ends[2][0] = (ends[0][0] + ends[2][0]) / 2
+    share = np.linspace(0, 2, 256)
+    lab = np.column_stack([np.interp(share, [0, 1, 2], [end[i] for end in ends]) for i in range(3)])
+    return _from_lab(lab)
+
+
+_RGB_TO_XYZ = np.array(
+    [[0.4124564, 0.3575761, 0.1804375], [0.2126729, 0.7151522, 0.0721750], [0.0193339, 0.1191920, 0.9503041]]
+)
+"""sRGB primaries and D65 white (IEC 61966-2-1)."""
+
+_WHITE = _RGB_TO_XYZ.sum(axis=1)
+
+
+def _to_lab(colour: str) -> np.ndarray:
+    """CIE 1976 L*a*b* of a colour, relative to D65."""
+    rgb = np.array(QColor(colour).getRgbF()[:3])
+    linear = np.where(rgb <= 0.04045, rgb / 12.92, ((rgb + 0.055) / 1.055) ** 2.4)
+    x, y, z = np.cbrt(_RGB_TO_XYZ @ linear / _WHITE)  # above 0.9 % of white, as all colours here are
+    return np.array([116 * y - 16, 500 * (x - y), 200 * (y - z)])
+
+
+def _from_lab(lab: np.ndarray) -> np.ndarray:
+    """uint8 ndarray (n, 3) of colours given as L*a*b* (n, 3)."""
+    y = (lab[:, 0] + 16) / 116
+    xyz = np.column_stack([y + lab[:, 1] / 500, y, y - lab[:, 2] / 200]) ** 3 * _WHITE
+    linear = np.clip(xyz @ np.linalg.inv(_RGB_TO_XYZ).T, 0, 1)
+    rgb = np.where(linear <= 0.0031308, 12.92 * linear, 1.055 * linear ** (1 / 2.4) - 0.055)
+    return (rgb * 255).round().astype(np.uint8)
 
 
 def contrast(one: str, other: str) -> float:

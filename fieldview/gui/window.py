@@ -10,7 +10,6 @@ from PySide6.QtWidgets import (
     QApplication,
     QHBoxLayout,
     QMainWindow,
-    QSplitter,
     QStackedWidget,
     QToolBar,
     QVBoxLayout,
@@ -30,6 +29,7 @@ from fieldview.gui.panels.ledger import Ledger
 from fieldview.gui.panels.quantities import Quantities
 from fieldview.gui.panels.readout import Readout
 from fieldview.gui.panels.regions import Regions
+from fieldview.gui.panels.shared import Shared
 from fieldview.gui.panels.start import Start
 from fieldview.gui.panels.time_strip import TimeStrip
 from fieldview.gui.recovery import Recovery, lost_sessions
@@ -96,7 +96,7 @@ class MainWindow(QMainWindow):
         self.ledger, self.quantities = Ledger(self.desk), Quantities(self.desk)
         self.readout, self.regions = Readout(self.desk), Regions(self.desk)
         self.time_strip, self.drawer = TimeStrip(self.desk), Drawer(self.desk)
-        self._splitters: dict[str, QSplitter] = {}
+        self._splitters: dict[str, Shared] = {}
         self._panels = (
             self.ledger,
             self.quantities,
@@ -145,19 +145,13 @@ class MainWindow(QMainWindow):
         row.addWidget(self.canvas, 1)
         column.addLayout(row, 1)
         column.addWidget(self.time_strip)
-        right = _splitter(Qt.Orientation.Vertical, (self.quantities, self.readout), (3, 2))
-        top = _splitter(Qt.Orientation.Horizontal, (self.ledger, middle, right), (0, 1, 0))
-        top.setSizes([236, 790, 252])
-        whole = _splitter(Qt.Orientation.Vertical, (top, self._lower()), (3, 1))
-        whole.setSizes([480, 170])
-        self._splitters |= {"right": right, "top": top, "whole": whole}
+        across, down = Qt.Orientation.Horizontal, Qt.Orientation.Vertical
+        right = Shared(down, {self.quantities: 0.62, self.readout: 0.38})
+        top = Shared(across, {self.ledger: 0.19, middle: 0.6, right: 0.21}, stretches=middle)
+        lower = Shared(across, {self.regions: 0.68, self.drawer: 0.32}, stretches=self.regions)
+        whole = Shared(down, {top: 0.71, lower: 0.29}, stretches=top)
+        self._splitters = {"right": right, "top": top, "lower": lower, "whole": whole}
         return whole
-
-    def _lower(self) -> QWidget:
-        lower = _splitter(Qt.Orientation.Horizontal, (self.regions, self.drawer), (1, 0))
-        lower.setSizes([900, 380])
-        self._splitters["lower"] = lower
-        return lower
 
     # -- the one way back: a picture is drawn --------------------------------------------------------
 
@@ -227,7 +221,8 @@ class MainWindow(QMainWindow):
             self.recovery.drop()
         places.remember(
             geometry=bytes(self.saveGeometry().toBase64()).decode(),
-            splitters={name: s.sizes() for name, s in self._splitters.items()},
+            splitters={name: s.sizes() for name, s in self._splitters.items() if s.settled}
+            or places.remembered().get("splitters", {}),
         )
         self.time_strip.stop()
         self.desk.jobs.close()
@@ -309,7 +304,7 @@ class MainWindow(QMainWindow):
         for name, splitter in self._splitters.items():
             wanted = sizes.get(name) if isinstance(sizes, dict) else None
             if isinstance(wanted, list) and len(wanted) == splitter.count() and all(n > 0 for n in wanted):
-                splitter.setSizes([int(n) for n in wanted])
+                splitter.wish([int(n) for n in wanted])
         self.start.show_recent(places.recent())
 
 
@@ -318,13 +313,3 @@ def title_of(picture) -> str:
         return "Loopflux"
     name = picture.path.name if picture.path else picture.session.run.files[0]
     return f"{name}[*] — Loopflux"
-
-
-def _splitter(orientation, widgets, stretch) -> QSplitter:
-    splitter = QSplitter(orientation)
-    splitter.setHandleWidth(1)
-    splitter.setChildrenCollapsible(False)
-    for place, (widget, share) in enumerate(zip(widgets, stretch, strict=True)):
-        splitter.addWidget(widget)
-        splitter.setStretchFactor(place, share)
-    return splitter

@@ -4,7 +4,7 @@ for every number and only put the answers into the shape that the panels draw.""
 from __future__ import annotations
 
 import os
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -18,6 +18,7 @@ from fieldview.gui.picture import Basis, Card, Curve, IsoLines, MapOf, Measured,
 from fieldview.session.models import RunSource, Session
 
 THUMBNAIL = (96, 48)
+Report = Callable[[float], None]
 GROWTH_FACTORS = np.linspace(0.1, 2.0, 39)
 CACHE_BYTES = 400_000_000
 """How much of the replay the window keeps: some dozens of frames of a million nodes."""
@@ -44,6 +45,7 @@ class Evaluated:
     prepared: Any
     measured: dict[str, Measured]
     facts: RunFacts | None = None
+    whole_run: Any = None
 
 
 def session_of_files(paths) -> Session:
@@ -70,22 +72,48 @@ def open_session(session: Session) -> Opened:
 
 
 def evaluate(
-    session: Session, bench: Any, frame: int, source: str, as_of: int | None, quantity: str
+    session: Session,
+    bench: Any,
+    frame: int,
+    source: str,
+    as_of: int | None,
+    quantity: str,
+    whole_run: Any,
+    report: Report,
 ) -> Evaluated:
-    """One frame (or the run's mean) after the ledger, mapped, and its regions measured quickly."""
+    """One frame after the ledger, the run's mean, or the frame less the mean; mapped, its regions measured
+    quickly. ``whole_run`` is what an earlier answer found out about all frames, or None."""
     from fieldview.compute.region import prepare
 
     run_before, bench = bench.run, bench.updated(session)
     facts = _facts(bench.run) if bench.run is not run_before else None
     frame = min(frame, len(bench.run) - 1)
+    if source != "frame" and whole_run is None:
+        whole_run = over_run(bench, source, as_of, report)
     if source == "mean":
-        field, tallies = bench.field("mean", upto=as_of), ()
+        field, tallies = whole_run, ()
     else:
         field, tallies = bench.field(frame, upto=as_of), tuple(bench.tallies(frame))
+    if source == "fluctuation":
+        field = whole_run.fluctuation(field)
     prepared = prepare(field)
     measured = {m.region.name: m for m in measure_quickly(session, field, prepared, session.regions)}
     shown = quick_map(field, quantity)
-    return Evaluated(bench, field, frame, tallies, shown, prepared, measured, facts)
+    return Evaluated(bench, field, frame, tallies, shown, prepared, measured, facts, whole_run)
+
+
+def over_run(bench: Any, source: str, as_of: int | None, report: Report) -> Any:
+    """The run's mean as a field (source "mean"), or its statistics, which fluctuations need."""
+    from fieldview.session.mean import mean_of
+    from fieldview.session.statistics import statistics_of
+
+    def frames() -> Iterator[Field]:
+        count = len(bench.run)
+        for frame in range(count):
+            report(frame / count)
+            yield bench.field(frame, upto=as_of)
+
+    return mean_of(frames()) if source == "mean" else statistics_of(frames())
 
 
 def measure_quickly(session: Session, field: Field, prepared: Any, wanted) -> list[Measured]:

@@ -122,30 +122,30 @@ class RegionLayer(Layer):
 
 
 def _beside(at: np.ndarray, box: QRectF, lens: Lens, taken: list[QRectF], others: list[QRectF]) -> QPointF:
-    """The place for a label that hides least: on the screen, clear of other labels, then of other regions."""
-    around = _bounds(at)
+    """The place for a label that hides least: on the screen, clear of other labels, then of other regions,
+    and no farther from its own region than it must."""
+    around, wide, high = _bounds(at), box.width(), box.height()
     left, right, top, bottom = around.left(), around.right(), around.top(), around.bottom()
-    middle = (left + right - box.width()) / 2
-    places = [
-        QPointF(right + 8, top),
-        QPointF(left - box.width() - 8, top),
-        QPointF(right + 8, bottom - box.height()),
-        QPointF(middle, top - box.height() - 8),
-        QPointF(middle, bottom + 8),
-        QPointF(left - box.width() - 8, bottom - box.height()),
-    ]
     inside = lens.rect.adjusted(4, 4, -4, -4)
+    columns = (right + 8, left - wide - 8, (left + right - wide) / 2, left, right - wide)
+    rows = (top, bottom - high, top - high - 8, bottom + 8, top - 2 * high - 12, bottom + high + 12)
+    places = [
+        QPointF(
+            min(max(x, inside.left()), max(inside.left(), inside.right() - wide)),
+            min(max(y, inside.top()), max(inside.top(), inside.bottom() - high)),
+        )
+        for y in rows
+        for x in columns
+    ]
 
     def hidden(place: QPointF) -> float:
         there = QRectF(place, box.size())
-        outside = _area(there) - _area(there.intersected(inside))
         over_labels = sum(_area(there.intersected(other)) for other in taken)
         over_regions = sum(_area(there.intersected(other)) for other in [*others, around])
-        return 1000 * outside + 200 * over_labels + over_regions
+        apart = there.center() - around.center()
+        return 200 * over_labels + over_regions + 4 * abs(complex(apart.x(), apart.y()))
 
-    x = min(max(right + 8, inside.left()), max(inside.left(), inside.right() - box.width()))
-    y = min(max(top, inside.top()), max(inside.top(), inside.bottom() - box.height()))
-    return min([*places, QPointF(x, y)], key=hidden)
+    return min(places, key=hidden)
 
 
 def _bounds(at: np.ndarray) -> QRectF:

@@ -12,9 +12,8 @@ from fieldview.gui.panels.base import label
 from fieldview.gui.panels.budget import Budget
 from fieldview.gui.panels.plots import Plot
 from fieldview.gui.panels.shape import Shape
-from fieldview.gui.panels.traces import trace_of
+from fieldview.gui.panels.traces import trace_entry, trace_of
 from fieldview.gui.picture import Picture
-from fieldview.gui.region_text import TRACE_SYMBOLS
 from fieldview.gui.theme import LIGHT, Theme
 
 TABS = (
@@ -25,6 +24,9 @@ TABS = (
     ("budget", "Budget"),
     ("shape", "Shape"),
 )
+
+
+NO_COMPONENTS = "The field has no components in the plane."
 
 
 class Drawer(QWidget):
@@ -77,10 +79,12 @@ class Drawer(QWidget):
             region,
             curve,
             picture.session,
+            picture.field,
             picture.traces,
             shown.coverage,
             shown.frame,
             shown.units,
+            shown.trace,
             self.theme,
         )
         if name == "budget":
@@ -126,6 +130,8 @@ def _along_axes(plot: Plot, picture: Picture) -> None:
 
 
 def _draw_components(plot: Plot, picture: Picture, curve, colour: str, words) -> str:
+    if not _in_plane(picture):
+        return NO_COMPONENTS
     if curve is None:
         return "working …"
     units, view = _units(picture), picture.unit_view
@@ -142,6 +148,10 @@ def _two_lines(plot: Plot, picture: Picture, colour: str, x_factor: float, facto
     plot.add_line(x, factor * curve.second, plot.theme.muted, spread=spread[1], dash=(4, 3))
 
 
+def _in_plane(picture: Picture) -> bool:
+    return picture.field is not None and picture.field.in_plane
+
+
 def _units(picture: Picture) -> Units:
     return picture.field.units if picture.field is not None else METRIC
 
@@ -155,6 +165,8 @@ def _draw_growth(plot: Plot, picture: Picture, colour: str) -> str:
         return "Choose a region."
     if region.shape == "line":
         return "A line encloses nothing that could grow."
+    if not _in_plane(picture):
+        return NO_COMPONENTS
     if curve is None:
         return "working …"
     _two_lines(plot, picture, colour, 1.0, picture.unit_view.of(unit)[0])
@@ -166,22 +178,22 @@ def _draw_over_time(plot: Plot, picture: Picture, colour: str) -> str:
     """The chosen region's number on every frame measured so far."""
     region = picture.selected
     known = picture.run is not None and any(t is not None for t in picture.run.times)
-    symbol = TRACE_SYMBOLS.get(region.shape if region else "", "Γ")
-    unit = _units(picture).circulation
-    plot.start("time [s]" if known else "frame", picture.unit_view.label(symbol, unit))
+    entry = trace_entry(picture, region.name) if region is not None else None
+    label = picture.unit_view.label(entry[0].symbol, entry[1]) if entry else ""
+    plot.start("time [s]" if known else "frame", label, zero=False)
     if region is None:
         return "Choose a region."
     points = trace_of(picture, region.name)
-    if not points:
+    if not points or entry is None:
         return "Press Follow over run to measure every frame."
     frames = [frame for frame, _, _ in points]
     x = [picture.run.times[f] for f in frames] if known else [f + 1 for f in frames]
-    factor, k = picture.unit_view.of(unit)[0], picture.shown.coverage
+    factor, k = picture.unit_view.of(entry[1])[0], picture.shown.coverage
     spread = np.array([np.nan if u is None else factor * k * u for _, _, u in points])
     plot.add_line(x, [factor * value for _, value, _ in points], colour, spread=spread)
     if picture.shown.frame in frames:
-        plot.add_mark(x[frames.index(picture.shown.frame)], "shown")
-    return f"{len(points)} of {picture.run.frames} frames"
+        plot.add_mark(x[frames.index(picture.shown.frame)], "")
+    return f"{len(points)} of {picture.run.frames} frames; band: ± U, k = {k:g}"
 
 
 _DRAW = {

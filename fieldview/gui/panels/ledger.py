@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 from PySide6.QtCore import QPoint, Qt
 from PySide6.QtWidgets import (
     QAbstractButton,
@@ -22,7 +24,7 @@ from fieldview.gui import ledger_edits
 from fieldview.gui.forms import ModelForm
 from fieldview.gui.panels.base import Panel, label, set_property
 from fieldview.gui.panels.switch import Switch
-from fieldview.gui.picture import Picture
+from fieldview.gui.picture import Picture, RunFacts
 from fieldview.publish import wording
 
 DRAG_PIXELS = 12
@@ -177,13 +179,23 @@ class RunLine(QFrame):
         frames = "1 frame" if run.frames == 1 else f"{run.frames:,} frames"
         ny, nx = run.shape
         self.title.setText(f"<b>Run</b> {escaped(name)}: {frames}, {nx} × {ny} nodes")
-        length = run.units.split(",")[0]
-        gaps = [wording.short(s) for s in run.spacing if s == s]
-        parts = [f"{' × '.join(dict.fromkeys(gaps))} {length} apart"] if gaps else []
-        parts.append(run.units.replace("px, pulse", "px per pulse"))
-        parts += [f"{len(run.notes)} remarks on reading"] if run.notes else []
+        remarks = "1 remark" if len(run.notes) == 1 else f"{len(run.notes)} remarks"
+        parts = [*grid_words(run), *([f"{remarks} on reading"] if run.notes else [])]
         self.detail.setText(" · ".join(parts))
         self.detail.setToolTip("\n".join(run.notes))
+
+
+def grid_words(run: RunFacts) -> list[str]:
+    """Spacing, unit of the vectors and frame rate, as far as they are known."""
+    length = run.units.split(",")[0]
+    near = length == "m" and all(not math.isfinite(s) or s < 0.1 for s in run.spacing)
+    gaps = [wording.short(1e3 * s if near else s) for s in run.spacing if math.isfinite(s)]
+    words = [f"{' × '.join(dict.fromkeys(gaps))} {'mm' if near else length} apart"] if gaps else []
+    words.append({"m, s": "m/s", "px, pulse": "px per pulse"}.get(run.units, run.units))
+    times = run.times
+    if len(times) > 1 and None not in (times[0], times[-1]) and times[-1] > times[0]:
+        words.append(f"{wording.short((len(times) - 1) / (times[-1] - times[0]))} Hz")
+    return words
 
 
 class LedgerLine(QFrame):

@@ -36,13 +36,14 @@ class Plot(pg.PlotWidget):
             axis.setTextPen(QColor(theme.muted))
             axis.setStyle(tickFont=themes.font(pixels=themes.SMALL_PIXELS), tickLength=-4, maxTickLevel=0)
 
-    def start(self, x_label: str, y_label: str) -> None:
-        """An empty plot with these axes."""
+    def start(self, x_label: str, y_label: str, *, zero: bool = True) -> None:
+        """An empty plot with these axes; ``zero`` draws the zero line and keeps it in sight."""
         self.clear()
         style = {"color": self.theme.muted, "font-size": f"{themes.SMALL_PIXELS}px"}
         self.setLabel("bottom", x_label, **style)
         self.setLabel("left", y_label, **style)
-        self.addItem(pg.InfiniteLine(0, 0, pen=pg.mkPen(self.theme.hairline, width=1)))
+        if zero:
+            self.addItem(pg.InfiniteLine(0, 0, pen=pg.mkPen(self.theme.hairline, width=1)))
 
     def add_line(self, x, y, colour: str, *, spread=None, dash: tuple[float, ...] = (), width=1.6) -> None:
         """A curve, with a band of ± ``spread`` where that is known."""
@@ -68,7 +69,7 @@ class Plot(pg.PlotWidget):
             90,
             pen=pg.mkPen(self.theme.muted, width=1, style=Qt.PenStyle.DashLine),
             label=text,
-            labelOpts={"position": 0.92, "color": self.theme.muted, "anchors": [(0, 0.5), (0, 0.5)]},
+            labelOpts={"position": 0.5, "color": self.theme.muted, "anchors": [(0, 0.5), (0, 0.5)]},
         )
         line.label.setFont(themes.font(pixels=themes.SMALL_PIXELS))
         self.addItem(line)

@@ -14,6 +14,9 @@ from fieldview.publish.region_numbers import ENTRIES, Entry, figure
 _BY_KEY = {entry.key: entry for entry in ENTRIES}
 
 
+GAPS = ("resolution_gap", "window_gap")
+
+
 @dataclass(frozen=True)
 class Column:
     """A number of the table; a line's number stands in the place of the contour's it matches."""
@@ -82,11 +85,16 @@ def _add(titles, tips, filled, column: Column, rows, picture: Picture) -> None:
     main = column.entries[0]
     spread = main.spread and any(n is not None and n.uncertainty is not None for _, n in found)
     values, spreads = [], []
+    beside = [figure(row, (column.entries[0].key[-1],)) for row in rows]
     k = picture.shown.coverage
-    for entry, number in found:
+    for (entry, number), owner in zip(found, beside, strict=True):
         expanded = None if number is None or number.uncertainty is None else k * number.uncertainty
         value = None if number is None else number.value
         text, u_text = wording.pair(*scaled(factor, value, expanded), signed=entry.signed)
+        if number is not None and entry.key[0] in GAPS and owner is not None and owner.uncertainty:
+            # a gap is judged against the U of the number it belongs to: one digit more than that shows
+            decimals = wording.decimals_for(factor * owner.uncertainty) + 1
+            text = wording.fixed(None if value is None else factor * value, decimals, signed=True)
         if number is None:
             text = u_text = ""
         muted = wording.is_noise(value, expanded) or picture.stale

@@ -19,12 +19,16 @@ from PySide6.QtWidgets import (
 
 from fieldview.gui import theme as themes
 from fieldview.gui.icons import icon
-from fieldview.gui.panels.base import label
-from fieldview.gui.panels.traces import trace_of
+from fieldview.gui.panels.traces import TRACE_WORDS, trace_of
 from fieldview.gui.picture import Picture
 from fieldview.gui.theme import LIGHT, Theme
 
-SOURCES = (("frame", "frame"), ("mean", "mean"))
+SOURCES = (("frame", "frame"), ("mean", "mean"), ("fluctuation", "fluct."))
+SOURCE_TIPS = {
+    "frame": "The shown frame as the ledger leaves it",
+    "mean": "The mean of the measured vectors over the run",
+    "fluctuation": "The shown frame less the run's mean",
+}
 RATES = (1, 2, 5, 10, 20, 50)
 
 
@@ -56,12 +60,17 @@ class TimeStrip(QWidget):
         row.addWidget(self.rate)
         self.ruler = Ruler(desk)
         row.addWidget(self.ruler, 1)
+        self.trace = QComboBox()
+        for choice, words in TRACE_WORDS.items():
+            self.trace.addItem(words, choice)
+        self.trace.setAccessibleName("Number of the chosen region over time")
+        self.trace.setToolTip("Which number of the chosen region is drawn over the frames")
+        self.trace.activated.connect(lambda place: desk.show(trace=self.trace.itemData(place)))
+        row.addWidget(self.trace)
         self.follow = QPushButton("Follow over run")
         self.follow.setToolTip("Measure the regions on every frame, in the background")
         self.follow.clicked.connect(desk.follow)
         row.addWidget(self.follow)
-        self.said = label("", "muted")
-        row.addWidget(self.said)
         self.setFixedHeight(56)
         self._clock = QTimer(self)
         self._clock.setInterval(100)
@@ -75,6 +84,7 @@ class TimeStrip(QWidget):
             button = QPushButton(text)
             button.setCheckable(True)
             button.setAccessibleName(f"Show the {source}")
+            button.setToolTip(SOURCE_TIPS[source])
             button.clicked.connect(lambda _=False, source=source: self.desk.show(source=source))
             group.addButton(button)
             box.addWidget(button)
@@ -88,7 +98,8 @@ class TimeStrip(QWidget):
         for source, button in self._sources.items():
             button.setChecked(source == picture.shown.source)
             button.setEnabled(several or (run is not None and source == "frame"))
-        for widget in (self.play, self.rate):
+        self.trace.setCurrentIndex(self.trace.findData(picture.shown.trace))
+        for widget in (self.play, self.rate, self.trace):
             widget.setEnabled(several)
         following = any(task.kind == "follow" for task in picture.tasks)
         self.follow.setText("Stop following" if following else "Follow over run")
