@@ -266,6 +266,8 @@ def _stuck_vectors(check) -> Finding:
     words = "every vector moves as much as the noise makes it"
     if not enough.any():
         words = f"no vector repeats itself; whether one is too quiet takes {FEWEST_STILL} samples"
+    elif any(level is None for level in levels.values()):
+        words = "no vector repeats itself; whether one is too quiet cannot be told without a noise level"
     if number:
         words = (
             f"{_some(number, 'vector')} change less than half of the noise makes expect, or not at all: "

@@ -6,13 +6,14 @@ import numpy as np
 import pytest
 
 from fieldview.compute.errors import InputError
-from fieldview.compute.field import Field
+from fieldview.compute.field import Field, Status
 from fieldview.compute.grid import Grid
 from fieldview.compute.units import METRIC, PIXEL
 from fieldview.session.check import run_check
 from fieldview.session.findings import FINE, LOOK, SERIOUS, UNKNOWN
 from fieldview.session.models import Session
 from fieldview.session.replay import Workbench
+from fieldview.session.statistics import statistics_of
 from tests.session.runs import vortex_frames
 
 GRID = Grid(np.arange(24.0) * 16, np.arange(20.0) * 16)
@@ -244,3 +245,25 @@ def test_a_run_on_disk(tmp_path):
     check = run_check(bench, "0:8", on_frame=done.append)
     assert done == list(range(8)) and len(check.frames) == 8
     assert check.unit == "m/s" and check.sigma["neighbours"]["u"] == pytest.approx(0.004, rel=0.25)
+
+
+@pytest.mark.filterwarnings("error")
+@pytest.mark.parametrize("shape", [(1, 9), (1, 1), (3, 1)])
+@pytest.mark.parametrize("count", [1, 2, 30])
+def test_small_grids_and_short_runs_have_verdicts_too(shape, count):
+    rng = np.random.default_rng(1)
+    grid = Grid(np.arange(float(shape[1])), np.arange(float(shape[0])))
+    frames = []
+    for _ in range(count):
+        w = rng.normal(size=shape)
+        w.flat[0] = np.nan
+        frames.append(Field(grid, w=w))
+    check = checked(frames, sigma=None, units=METRIC)
+    assert json.dumps([check.rows(), check.frame_rows()], allow_nan=False)
+    assert finding(check, "share measured").value == pytest.approx(1 - 1 / w.size)
+    if count == 30 and shape == (3, 1):
+        assert "cannot be told without a noise level" in finding(check, "stuck vectors").verdict
+    statistics = statistics_of(frames)
+    rows = statistics.rows(points=[(0, 0)])
+    assert json.dumps(rows, allow_nan=False) and rows[0]["points"][0]["value"] == 0.0
+    assert statistics.mean.count(Status.MISSING) == 1

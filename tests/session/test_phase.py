@@ -36,17 +36,17 @@ def averaged(rule, frames) -> PhaseAverages:
 
 
 def test_the_cycle_is_found_again_in_its_bins():
-    phases = np.random.default_rng(2).uniform(0, 40, 1600)
+    phases = np.random.default_rng(2).uniform(0, 40, 800)
     averages = averaged(PhaseRule(8, channel="crank"), cycle(phases))
-    assert sum(len(b.offsets) for b in averages.bins) == 1600 and averages.left_out == 0
+    assert sum(len(b.offsets) for b in averages.bins) == 800 and averages.left_out == 0
     for number, row in enumerate(averages.rows()):
         mean, turn = averages.field(number), np.exp(2j * np.pi * number / 8)
         # a bin an eighth of a cycle wide keeps sin(pi/8)/(pi/8) of the first harmonic
         assert row["first_harmonic_kept"] == pytest.approx(0.9745, abs=0.005)
         assert row["jitter_deg"] == pytest.approx(45 / np.sqrt(12), rel=0.1)
         kept = turn * np.exp(2j * np.pi * averages.bins[number].shift) * row["first_harmonic_kept"]
-        assert np.mean(mean.u) == pytest.approx(kept.real, abs=0.01)
-        assert np.mean(mean.v) == pytest.approx(3 + kept.imag, abs=0.01)
+        assert np.mean(mean.u) == pytest.approx(kept.real, abs=0.015)
+        assert np.mean(mean.v) == pytest.approx(3 + kept.imag, abs=0.015)
         assert any(f"phase {45 * number}° ± 22.5°" in note for note in mean.notes)
 
 

@@ -52,7 +52,7 @@ def deviations(run: RunStatistics, truth: dict[str, float], **options) -> dict[s
 def test_statistics_of_a_known_field_lie_within_their_uncertainty():
     """The 120 nodes are independent: the root mean square of (value - truth) / u is 1 to 6.5 %, and the
     effective number of samples behind u is itself estimated."""
-    run = statistics_of(turbulent_run(np.random.default_rng(1), 1500))
+    run = statistics_of(turbulent_run(np.random.default_rng(1), 900))
     truth = {
         "mean_u": 1.0,
         "mean_v": -0.5,
@@ -127,11 +127,11 @@ def test_noise_that_is_not_stated_cannot_be_taken_off():
 
 def test_integral_time_scale():
     """AR(1) with phi = 0.8 at 10 Hz: 0.1 s x 4.5; noise in a share q of the variance: 0.1 s (4.5 - 4 q)."""
-    run = statistics_of(turbulent_run(np.random.default_rng(5), 1200, sigma=1e-9, gaps=0.0))
+    run = statistics_of(turbulent_run(np.random.default_rng(5), 600, sigma=1e-9, gaps=0.0))
     scale = run.maps()["integral_time_u"]
     assert scale.unit(run.mean.units) == "s"
     assert np.mean(scale.values) == pytest.approx(0.45, rel=0.1)
-    noisy = statistics_of(turbulent_run(np.random.default_rng(5), 1200, sigma=0.3)).maps()["integral_time_u"]
+    noisy = statistics_of(turbulent_run(np.random.default_rng(5), 600, sigma=0.3)).maps()["integral_time_u"]
     assert np.mean(noisy.values) == pytest.approx(0.1 * (0.5 + 4 * 0.5), rel=0.1)
 
 
