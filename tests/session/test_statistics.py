@@ -80,6 +80,27 @@ def test_a_short_run_has_hardly_smaller_uncertainties_than_it_should(count):
     assert few == (count == 60)
 
 
+@pytest.mark.parametrize("frequency", [0.16, 0.013])
+def test_a_flow_that_repeats_itself_gets_too_large_uncertainties_never_too_small(frequency):
+    """Its correlation swings on beyond the first zero, and its mean settles as 1 / N, not as its root."""
+    rng = np.random.default_rng(13)
+    start = rng.uniform(0, 2 * np.pi, GRID.shape)
+    run = RunStatistics()
+    for number in range(100):
+        turn = np.exp(1j * (2 * np.pi * frequency * number + start))
+        noise = SIGMA * rng.normal(size=(2, *GRID.shape))
+        run.add(Field(GRID, u=turn.real + noise[0], v=turn.imag + noise[1]))
+    square = 0.5 + SIGMA**2
+    truth = {
+        "mean_u": 0.0,
+        "std_u": np.sqrt(square),
+        "reynolds_uv": 0.0,
+        "reynolds_uu": square,
+        "tke": square,
+    }
+    assert all(ratio < 1.1 for ratio in deviations(run, truth).values())
+
+
 def test_memory_does_not_grow_with_the_frames():
     def peak(count):
         rng = np.random.default_rng(11)
