@@ -143,18 +143,22 @@ def area_weights(pieces: AreaPieces, grid: Grid) -> tuple[np.ndarray, tuple[int,
     top, left = int(pieces.iy.min()), int(pieces.ix.min())
     rows, columns = int(pieces.iy.max()) - top + 2, int(pieces.ix.max()) - left + 2
     flat = (pieces.iy - top) * columns + (pieces.ix - left)
-    weights = np.zeros((rows, columns))
+    # what goes to the upper edge of a row of cells falls on the same nodes as the lower edge of the next
+    edges = np.bincount(
+        np.concatenate([flat, flat + columns]), np.concatenate([pieces.lower, pieces.upper]), rows * columns
+    ).reshape(rows, columns)
     width = 0.5 * np.diff(grid.x)[left : left + columns - 1]
     width = np.pad(width, (0, columns - 1 - width.size))  # a contour along the last line has no cell there
-    for shift, factors in ((0, pieces.lower), (1, pieces.upper)):
-        at = np.bincount(flat, factors, minlength=(rows - 1) * columns).reshape(rows - 1, columns)
-        # factor of each cell: all pieces to the right of it
-        ahead = width * np.cumsum(at[:, :0:-1], axis=1)[:, ::-1]
-        weights[shift : rows - 1 + shift, :-1] += ahead
-        weights[shift : rows - 1 + shift, 1:] += ahead
+    # the factor of a cell is that of all pieces to the right of it, less those up to it: they cancel in a row
+    np.cumsum(edges, axis=1, out=edges)
+    edges = edges[:, :-1]
+    edges *= width
     node_row, node_column = pieces.nodes // nx - top, pieces.nodes % nx - left
-    own = np.bincount((node_row * columns + node_column).ravel(), pieces.corners.ravel(), weights.size)
-    return weights + own.reshape(weights.shape), (top, left)
+    at = (node_row * columns + node_column).ravel()
+    weights = np.bincount(at, pieces.corners.ravel(), rows * columns).reshape(rows, columns)
+    weights[:, :-1] -= edges
+    weights[:, 1:] -= edges
+    return weights, (top, left)
 
 
 def _running(steps: np.ndarray) -> np.ndarray:

@@ -87,7 +87,7 @@ class Contour:
         what = "the contour" if self.shape.closed else "the line"
         inside = 0 <= iy < ny and 0 <= ix < nx and self.grid.is_plane
         does = "passes a gap" if inside else "leaves the grid"
-        missed = f"{1 - self.contour_share:.2%} of it is not measured"
+        missed = f"{percent(1 - self.contour_share)} of it is not measured"
         return f"{what} {does} at ({z.real:.4g}, {z.imag:.4g}); {missed}"
 
     # --- the line ----------------------------------------------------------------------------------
@@ -181,3 +181,8 @@ class Contour:
 def _share(part: float, whole: float) -> float:
     share = part / whole
     return 1.0 if share > 1 - _WHOLE else max(float(share), 0.0)
+
+
+def percent(share: float) -> str:
+    """A share in words: two significant digits."""
+    return f"{100 * share:.2g} %"

@@ -7,6 +7,7 @@ var first = a'C_u a + b'C_v b, var second = b'C_u b + a'C_v a, cov = a'C_u b - b
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -14,6 +15,9 @@ import numpy as np
 from fieldview.compute.covariance import triangle
 from fieldview.compute.field import Field
 from fieldview.compute.node_weights import NodeWeights, carried_back
+
+_CACHED_NODES = 32_768
+"""Nodes worked on at a time."""
 
 _DENSE = 0.15
 """Share of the nodes of their bounding box from which weights are treated as a block."""
@@ -64,6 +68,22 @@ def pair_variance(weights: NodeWeights, field: Field, *, measured: bool = False)
     return found if np.isfinite(found.first + found.second) else None
 
 
+def block_variance(
+    block: np.ndarray, corner: tuple[int, int], field: Field, *, times: np.ndarray | None = None
+) -> PairVariance | None:
+    """As `pair_variance`, of weights (rows, columns) on a block of nodes whose first one is ``corner``."""
+    error = field.error
+    scalar = error.sigma is not None and all(np.ndim(error.sigma.get(name, 0)) == 0 for name in ("u", "v"))
+    if not scalar or field.maps or not {"u", "v"} <= set(error.sigma):
+        whole = block * (1 + 0j if times is None else times)
+        return pair_variance(NodeWeights.of_block(whole, corner, field.grid.shape[1]), field)
+    if error.turn != 1:
+        times = error.turn if times is None else times * error.turn
+    aa, bb, ab = _block_forms(block, error.correlation, times)
+    var_u, var_v = (float(error.sigma[name]) ** 2 for name in ("u", "v"))
+    return PairVariance(var_u * aa + var_v * bb, var_u * bb + var_v * aa, (var_u - var_v) * ab)
+
+
 def through_variance(weights: NodeWeights, field: Field, *, measured: bool = False) -> float | None:
     """Of a functional of w, with real weights; None where its sigma is not known."""
     error = field.error
@@ -93,13 +113,58 @@ def _forms(nodes, z, shape, correlation) -> tuple[float, float, float]:
     if nodes.size > _DENSE * box[0] * box[1]:
         block = np.zeros(box, z.dtype)
         block[rows - top, columns - left] = z
-        image = _correlated_block(block, correlation)
-        square, modulus = (block * image).sum(), (block.conj() * image).sum().real
-    else:
-        half = _half_image(rows, columns, z, shape[1], correlation)
-        square = (z * (z + 2 * half)).sum()
-        modulus = (z.conj() * (z + 2 * half)).sum().real
+        return _block_forms(block, correlation)
+    half = _half_image(rows, columns, z, shape[1], correlation)
+    return _parts((z.conj() * (z + 2 * half)).sum().real, (z * (z + 2 * half)).sum())
+
+
+def _parts(modulus: float, square: complex) -> tuple[float, float, float]:
+    """a'Ra, b'Rb and a'Rb from conj(z)'Rz and z'Rz."""
     return 0.5 * (modulus + square.real), 0.5 * (modulus - square.real), 0.5 * float(np.imag(square))
+
+
+def _block_forms(
+    block: np.ndarray, correlation: tuple[float, float], times=None
+) -> tuple[float, float, float]:
+    """a'Ra, b'Rb and a'Rb of weights a + ib on a block of nodes; ``times`` is a factor or one per node."""
+    if not all(float(nodes).is_integer() for nodes in correlation):
+        block = block if times is None else block * times
+        image = _correlated_block(block, correlation)
+        return _parts(np.vdot(block, image).real, np.dot(block.ravel(), image.ravel()))
+    # the triangle is a box folded with itself: R = B'B / (mx my)
+    modulus = square = 0.0
+    for boxed in _boxed(block, int(correlation[0]), int(correlation[1]), times):
+        modulus += float(np.vdot(boxed, boxed).real)
+        square += np.dot(boxed.ravel(), boxed.ravel())
+    return _parts(modulus / np.prod(correlation), square / np.prod(correlation))
+
+
+def _boxed(block: np.ndarray, along_x: int, along_y: int, times) -> Iterator[np.ndarray]:
+    """Sums of the block, zero around it, over boxes of nodes: some rows at a time, to stay in the cache."""
+    rows = block.shape[0]
+    step = max(_CACHED_NODES // block.shape[1], 1)
+    for start in range(0, rows + along_y - 1, step):
+        first, last = max(start - along_y + 1, 0), min(start + step, rows)
+        part = block[first:last]
+        if times is not None:
+            part = part * (times[first:last] if np.ndim(times) else times)
+        sums = _box_sum(part, along_y, 0)
+        yield _box_sum(sums[start - first : start - first + step], along_x, 1)
+
+
+def _box_sum(block: np.ndarray, nodes: int, axis: int) -> np.ndarray:
+    """Sums over this many neighbouring nodes along an axis, those that reach beyond the block too."""
+    if nodes == 1:
+        return block
+    shape = list(block.shape)
+    shape[axis] += nodes - 1
+    total = np.empty(shape, block.dtype)
+    lines, own = np.moveaxis(total, axis, 0), np.moveaxis(block, axis, 0)
+    lines[: own.shape[0]] = own
+    lines[own.shape[0] :] = 0
+    for shift in range(1, nodes):
+        lines[shift : shift + own.shape[0]] += own
+    return total
 
 
 def _correlated_block(block: np.ndarray, correlation: tuple[float, float]) -> np.ndarray:

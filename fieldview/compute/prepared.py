@@ -103,6 +103,43 @@ class Prepared:
 
     # --- for the full set of numbers ---------------------------------------------------------------
 
+    def component(self, name: str) -> np.ndarray:
+        """u or v at every node: (ny * nx,)."""
+        return getattr(self.field, name).ravel()
+
+    @cached_property
+    def speed(self) -> np.ndarray:
+        """At every node, 0 where not valid: (ny * nx,)."""
+        return np.abs(self.velocity)
+
+    @cached_property
+    def direction(self) -> np.ndarray:
+        """Velocity over speed, complex (ny * nx,); 0 where there is no speed."""
+        return self.velocity / np.where(self.speed > 0, self.speed, 1.0)
+
+    @cached_property
+    def vorticity(self) -> np.ndarray:
+        """NaN where there is none: (ny * nx,)."""
+        return np.ascontiguousarray(self.rates.real).ravel()
+
+    @cached_property
+    def velocity_sums(self) -> RunningSums:
+        return RunningSums(self.velocity.reshape(self.grid.shape), self.grid, self.cells)
+
+    @cached_property
+    def speed_sums(self) -> RunningSums:
+        return RunningSums(self.speed.reshape(self.grid.shape), self.grid, self.cells)
+
+    @cached_property
+    def direction_sums(self) -> RunningSums:
+        return RunningSums(self.direction.reshape(self.grid.shape), self.grid, self.cells)
+
+    @cached_property
+    def vorticity_size_sums(self) -> RunningSums:
+        """Of the absolute vorticity, 0 where there is none."""
+        size = np.abs(np.nan_to_num(self.rates.real))
+        return RunningSums(size, self.grid, self.cells)
+
     @cached_property
     def keys_line(self) -> KeysLine:
         return KeysLine(self.grid)

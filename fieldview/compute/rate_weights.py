@@ -8,6 +8,12 @@ from fieldview.compute.derivatives import derivative_rows
 from fieldview.compute.node_weights import NodeWeights
 from fieldview.compute.prepared import Prepared
 
+_CACHED_NODES = 32_768
+"""Nodes worked on at a time."""
+
+_NOTHING = 1e-12
+"""Share of the largest weight that counts as round-off: coordinates far from 0 leave some 1e-13 of it."""
+
 
 def rate_weights(area: np.ndarray, corner: tuple[int, int], prepared: Prepared) -> NodeWeights:
     """Complex weights whose pair is (integral of vorticity, integral of divergence).
@@ -25,34 +31,57 @@ def rate_weights(area: np.ndarray, corner: tuple[int, int], prepared: Prepared) 
     """
     place = prepared.grid.placement
     factors = {"x": 1j * place.factor, "y": (1 if place.mirrored else -1) * place.factor}
-    # outside the contour the weights are round-off, not zero
-    area = np.where(np.abs(area) > 1e-13 * np.abs(area).max(), area, 0.0)
     reach = max(rule.reach for rule, _ in prepared.stencils.values())
-    block = np.zeros((area.shape[0] + 2 * reach, area.shape[1] + 2 * reach), complex)
-    parts = {"x": np.zeros(block.shape), "y": np.zeros(block.shape)}
-    scattered = []
-    for along, (rule, plain) in prepared.stencils.items():
+    scattered, masked = [], {}
+    for along, (_, plain) in prepared.stencils.items():
         own = _block(plain, corner, area.shape)
-        _add_stencil(parts[along], np.where(own, area, 0.0), corner, rule, reach)
-        rest = np.flatnonzero((area != 0) & ~own)
-        if rest.size:
+        masked[along] = area if own.all() else np.where(own, area, 0.0)
+        # outside the contour the weights are round-off, not zero
+        rest = () if masked[along] is area else np.flatnonzero((np.abs(area) > _NOTHING * area.max()) & ~own)
+        if len(rest):
             scattered.append(_of_rows(rest, area, corner, along, factors[along], prepared))
-    for along, part in parts.items():
-        block += factors[along] * part
-    nodes, values = _inside(block, (corner[0] - reach, corner[1] - reach), prepared.grid.shape)
+    found = _transposed(masked, corner, prepared, reach)
+    at = np.concatenate([nodes for nodes, _, _ in found])
+    values = np.concatenate([factors["x"] * of_x + factors["y"] * of_y for _, of_x, of_y in found])
+    rows, columns = np.divmod(at, area.shape[1] + 2 * reach)
+    nodes = (rows + corner[0] - reach) * prepared.grid.shape[1] + columns + corner[1] - reach
     if not scattered:
         return NodeWeights(nodes, values)
     found = [(nodes, values), *scattered]
     return NodeWeights.gathered(*(np.concatenate(part) for part in zip(*found, strict=True)))
 
 
-def _add_stencil(total, area, corner, rule, reach) -> None:
-    """Add the transpose of the stencil times area weights."""
-    rows, columns = area.shape
-    for (dy, dx), weight in zip(rule.offsets, rule.weights, strict=True):
-        if weight.any():
-            target = total[reach + dy : reach + dy + rows, reach + dx : reach + dx + columns]
-            target += area * _block(weight, corner, area.shape)
+def _transposed(masked, corner, prepared: Prepared, reach: int) -> list[tuple[np.ndarray, ...]]:
+    """(flat node of the framed block, weights along x and y) of the transposed stencils, some rows at a time.
+
+    Well inside an even grid the differences cancel: few nodes are left.
+    """
+    rows, columns = masked["x"].shape
+    largest = masked["x"].max() * max(np.abs(weight).max() for weight in _weights_of(prepared))
+    wide, step = columns + 2 * reach, max(_CACHED_NODES // columns, 2 * reach + 1)
+    found = []
+    for first in range(0, rows + 2 * reach, step):
+        last = min(first + step, rows + 2 * reach)
+        parts = []
+        for along, (rule, _) in prepared.stencils.items():
+            total = np.zeros((last - first, wide))
+            for (dy, dx), weight in zip(rule.offsets, rule.weights, strict=True):
+                # rows of the area that this offset brings to the rows first ... last of the framed block
+                top, bottom = max(first - reach - dy, 0), min(last - reach - dy, rows)
+                if top < bottom and weight.any():
+                    at = top + reach + dy - first
+                    own = _block(weight, (corner[0] + top, corner[1]), (bottom - top, columns))
+                    total[at : at + bottom - top, reach + dx : reach + dx + columns] += (
+                        masked[along][top:bottom] * own
+                    )
+            parts.append(total.ravel())
+        nodes = np.flatnonzero(np.abs(parts[0]) + np.abs(parts[1]) > _NOTHING * largest)
+        found.append((nodes + first * wide, parts[0][nodes], parts[1][nodes]))
+    return found
+
+
+def _weights_of(prepared: Prepared):
+    return [weight for rule, _ in prepared.stencils.values() for weight in rule.weights]
 
 
 def _block(values: np.ndarray, corner: tuple[int, int], shape: tuple[int, int]) -> np.ndarray:
@@ -72,10 +101,3 @@ def _of_rows(rest, area, corner, along, factor, prepared) -> tuple[np.ndarray, n
     rows = both[0 if along == "x" else 1]
     spread = np.repeat(area.ravel()[rest], np.diff(rows.indptr))
     return rows.indices, factor * rows.data * spread
-
-
-def _inside(block, corner, shape) -> tuple[np.ndarray, np.ndarray]:
-    """Nodes and weights of a block that are not zero; nothing of it stands outside the grid."""
-    size = np.abs(block.real) + np.abs(block.imag)
-    rows, columns = np.nonzero(size > 1e-13 * size.max())
-    return (rows + corner[0]) * shape[1] + columns + corner[1], block[rows, columns]

@@ -8,7 +8,7 @@ from __future__ import annotations
 from dataclasses import replace
 
 from fieldview.compute.budget import made, random_part, remarks, systematic_parts
-from fieldview.compute.contour import Contour
+from fieldview.compute.contour import Contour, percent
 from fieldview.compute.field import Field
 from fieldview.compute.numbers import Number
 from fieldview.compute.pair_variance import PairVariance, pair_variance
@@ -111,13 +111,13 @@ def _of_area(numbers: RegionNumbers, contour: Contour) -> RegionNumbers:
     share = contour.area_share
     found: dict = {"coverage": {**numbers.coverage, "area": share}}
     if share < 1 and contour.is_whole:
-        warnings.append(f"{1 - share:.2%} of the area is not measured: the area integrals have no value")
+        warnings.append(f"{percent(1 - share)} of the area is not measured: the area integrals have no value")
     if field.in_plane:
         unit = field.units.circulation
         rates = None
         if share == 1 and contour.rate_share < 1:
             warnings.append(
-                f"there is no vorticity on {1 - contour.rate_share:.2%} of the area: "
+                f"there is no vorticity on {percent(1 - contour.rate_share)} of the area: "
                 "the integrals of vorticity and divergence have no value"
             )
         elif share == 1:

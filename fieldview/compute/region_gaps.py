@@ -9,7 +9,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from fieldview.compute.contour import Contour
+from fieldview.compute.contour import Contour, percent
 from fieldview.compute.filling import FillMap
 from fieldview.compute.linear import MeanRemoval
 from fieldview.compute.node_weights import NodeWeights
@@ -62,7 +62,9 @@ def resolution_gap(contour: Contour, reference: NodeWeights | None = None) -> Ga
         return Gap(None, reason=reason)
     reason = ""
     if contour.cubic_share < 1:
-        reason = f"the resolution gap rests on the {contour.cubic_share:.0%} of the contour with a cubic line"
+        reason = (
+            f"the resolution gap rests on the {percent(contour.cubic_share)} of the contour with a cubic line"
+        )
     return _gap(contour.cubic - (reference or contour.bilinear), contour.prepared, reason)
 
 
@@ -105,9 +107,7 @@ def _strength(contour: Contour) -> float:
     """What the first number could be: absolute vorticity enclosed, or absolute velocity along the line."""
     prepared = contour.prepared
     if contour.shape.closed:
-        weights, _ = contour.area
-        rates = contour.block(np.nan_to_num(prepared.rates.real))
-        return float((weights * np.abs(rates)).sum())
+        return float(prepared.vorticity_size_sums.integral(contour.area_pieces))
     pieces = contour.pieces
     speeds = np.abs(prepared.velocity)[contour.corner_nodes].mean(axis=0)
     return float((speeds * pieces.lengths[contour.measured]).sum())

@@ -24,7 +24,8 @@ def completed(numbers: RegionNumbers, contour: Contour, line: str) -> RegionNumb
     """The quick numbers with everything that they leave out."""
     field = contour.prepared.field
     if field.in_plane and contour.is_whole:
-        numbers = _with_line_gaps(numbers, contour, line)
+        window = window_gap(contour, contour.line(line))
+        numbers = _with_line_gaps(numbers, contour, line, window)
     if not contour.shape.closed:
         return numbers
     if field.in_plane and contour.is_whole:
@@ -33,10 +34,10 @@ def completed(numbers: RegionNumbers, contour: Contour, line: str) -> RegionNumb
     if contour.area_share < 1:
         return numbers
     if field.in_plane and contour.rate_share == 1:
-        numbers = _with_area_budgets(numbers, contour, line)
+        numbers = _with_area_budgets(numbers, contour, line, window if contour.is_whole else Gap(None))
     if field.w is not None:
         numbers = _with_through_budget(numbers, contour)
-    return replace(numbers, inside=values_inside(contour))
+    return replace(numbers, inside=values_inside(contour, numbers.vorticity_integral))
 
 
 def _said(numbers: RegionNumbers, *reasons: str) -> RegionNumbers:
@@ -44,10 +45,10 @@ def _said(numbers: RegionNumbers, *reasons: str) -> RegionNumbers:
     return replace(numbers, warnings=(*numbers.warnings, *fresh))
 
 
-def _with_line_gaps(numbers: RegionNumbers, contour: Contour, line: str) -> RegionNumbers:
+def _with_line_gaps(numbers: RegionNumbers, contour: Contour, line: str, window: Gap) -> RegionNumbers:
     first, second = line_names(contour.shape)
     weights = contour.line(line)
-    resolution, window = resolution_gap(contour), window_gap(contour, weights)
+    resolution = resolution_gap(contour)
     filling, why = _filling(weights, contour)
     both = (getattr(numbers, first), getattr(numbers, second))
     made_of = _extended(both, _gap_parts(resolution, window, filling))
@@ -66,10 +67,12 @@ def _with_line_gaps(numbers: RegionNumbers, contour: Contour, line: str) -> Regi
     )
 
 
-def _with_area_budgets(numbers: RegionNumbers, contour: Contour, line: str) -> RegionNumbers:
+def _with_area_budgets(numbers: RegionNumbers, contour: Contour, line: str, window: Gap) -> RegionNumbers:
     """Area integrals and closures with budgets.
 
     What the derivative scheme misses shows in the cubic line less the area integral: its resolution gap.
+    The measuring window does to the area integrals what it does to the line's, by Stokes's and Gauss's
+    theorems.
     """
     field = contour.prepared.field
     names = ("vorticity_integral", "divergence_integral")
@@ -77,7 +80,6 @@ def _with_area_budgets(numbers: RegionNumbers, contour: Contour, line: str) -> R
     areas = _budgeted(values, contour.rates, contour)
     whole = contour.is_whole
     resolution = resolution_gap(contour, contour.rates) if whole else Gap(None)
-    window = window_gap(contour, contour.rates)
     filling, why = _filling(contour.rates, contour)
     areas = _extended(areas, _gap_parts(resolution, window, filling))
     found = dict(zip(names, areas, strict=True))

@@ -38,7 +38,9 @@ def peak_megabytes(path, frames: str) -> float:
     if child == 0:
         devnull = os.open(os.devnull, os.O_WRONLY)
         os.dup2(devnull, 1)
-        os.execv(sys.executable, [sys.executable, "-m", "fieldview", "measure", str(path), "--frames", frames])
+        os.execv(
+            sys.executable, [sys.executable, "-m", "fieldview", "measure", str(path), "--frames", frames]
+        )
     _, status, usage = os.wait4(child, 0)
     assert os.waitstatus_to_exitcode(status) == 0
     return usage.ru_maxrss / 1024
