@@ -14,7 +14,7 @@ from fieldview.session.store import load_session
 from fieldview.session.traces import probe_trace, trace_row
 
 PASSING = fin_wake.CONVECTION / fin_wake.SPACING
-"""Vortices of a row pass at 1.991 Hz; the fin heaves at 2.0 Hz."""
+"""Rate at which the vortices of a row pass: the fin's 2.0 Hz. [Hz]"""
 
 
 @pytest.fixture(scope="module")

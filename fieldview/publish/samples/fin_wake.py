@@ -22,8 +22,11 @@ from fieldview.publish.samples.instruments import (
 
 STREAM, CONVECTION = 0.20, 0.229
 CIRCULATION, CORE = 0.010, 0.009
-ROW_DISTANCE, SPACING = 0.030, 0.115
+ROW_DISTANCE = 0.030
 FREQUENCY, HEAVE, CHORD, THICKNESS = 2.0, 0.030, 0.050, 0.008
+SPACING = CONVECTION / FREQUENCY
+"""From vortex to vortex of a row, 115 mm: one leaves in every period of the fin. [m]"""
+
 PIXEL, PULSE_SEPARATION, NOISE_PIXELS, WINDOW = 0.1875e-3, 4e-3, 0.1, 0.006
 NODE_SPACING, COLUMNS, ROWS = 0.003, 73, 37
 FRAMES, INTERVAL = 48, 0.08
@@ -143,7 +146,7 @@ def _session() -> dict:
             {
                 "name": "lower vortex",
                 "shape": "circle",
-                "centre": [_FIRST_UPPER + SPACING / 2, -0.015],
+                "centre": [round(_FIRST_UPPER + SPACING / 2, 5), -0.015],
                 "radius": 0.020,
             },
             {"name": "one pair", "shape": "rectangle", "corners": [[0.070, -0.045], [0.185, 0.045]]},
