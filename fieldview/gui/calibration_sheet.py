@@ -12,6 +12,7 @@ from fieldview.gui.forms import number_text, read_number
 from fieldview.gui.panels.base import label
 from fieldview.gui.sheets import Sheet, in_a_row, number_entry
 from fieldview.session.convert import set_calibration
+from fieldview.session.regions import Line
 from fieldview.session.steps import Calibrate, TurnAxes
 
 
@@ -37,12 +38,20 @@ class CalibrationSheet(Sheet):
         self.take.setToolTip("Length of the line region that is chosen on the canvas")
         self.take.setAutoDefault(False)
         self.take.clicked.connect(self._take_line)
+        self.point = QPushButton("Click on the canvas")
+        self.point.setToolTip("Click the two ends of the known distance")
+        self.point.setAutoDefault(False)
+        self.point.clicked.connect(self._point_out_distance)
+        self.axes = QComboBox()
+        self.axes.setAccessibleName("Axes that the distance scales")
+        for words, value in (("both axes", (0, 1)), ("x only", (0,)), ("y only", (1,))):
+            self.axes.addItem(words, value)
         self.use = QPushButton("Use")
         self.use.setAutoDefault(False)
         self.use.setAccessibleName("Use this distance as the scale")
         self.use.clicked.connect(self._use_distance)
         form.addRow(label("known distance [mm] over [px]"), in_a_row(self.distance, self.pixels, self.use))
-        form.addRow("", self.take)
+        form.addRow("", in_a_row(self.point, self.take, self.axes))
         self.scale_u = number_entry("Uncertainty of the scale, relative")
         form.addRow(label("its standard uncertainty, relative"), self.scale_u)
         form.addRow(label("Time", "heading"))
@@ -53,7 +62,11 @@ class CalibrationSheet(Sheet):
         form.addRow(label("frame interval [s]"), self.interval)
         form.addRow(label("Axes", "heading"))
         self.origin = [number_entry("Origin, column"), number_entry("Origin, row")]
-        form.addRow(label("pixel that becomes (0, 0)"), in_a_row(*self.origin))
+        self.point_origin = QPushButton("Click")
+        self.point_origin.setAccessibleName("Click the origin on the canvas")
+        self.point_origin.setAutoDefault(False)
+        self.point_origin.clicked.connect(self._point_out_origin)
+        form.addRow(label("pixel that becomes (0, 0)"), in_a_row(*self.origin, self.point_origin))
         self.angle = number_entry("Turn of the axes")
         form.addRow(label("turn, counter-clockwise [°]"), self.angle)
         self.reflect = QComboBox()
@@ -80,9 +93,12 @@ class CalibrationSheet(Sheet):
         if session is None:
             return
         metric = picture.run is not None and picture.run.units == "m, s"
-        for entry in (*self.scale, self.pulse, *self.origin, self.distance, self.pixels, self.use):
+        offered = (self.use, self.point, self.axes, self.point_origin)
+        for entry in (*self.scale, self.pulse, *self.origin, self.distance, self.pixels, *offered):
             entry.setEnabled(not metric)
             entry.setToolTip("The run is in metres and seconds already" if metric else "")
+        turned = any(isinstance(s, TurnAxes) and s.on for s in session.ledger)
+        self.point_origin.setEnabled(not metric and not turned)
         self.take.setEnabled(not metric and picture.selected is not None and picture.selected.shape == "line")
         self._say_sign(picture)
         parts = (session.ledger, session.error_model, session.run.reading)
@@ -119,15 +135,42 @@ class CalibrationSheet(Sheet):
         self.sign.setText(f"The strongest vortex turns {now} now {change}.")
 
     def _take_line(self) -> None:
-        picture = self.desk.picture
-        region, session = picture.selected, picture.session
-        if region is None or region.shape != "line":
-            return
-        if _step(session, Calibrate) is not None:
-            # the line's length in pixels, whatever units the session is in now
-            session = set_calibration(session, None)
-            region = next(r for r in session.regions if r.name == region.name)
-        self.pixels.setText(number_text(region.outline().length))
+        region = self.desk.picture.selected
+        if region is not None and region.shape == "line":
+            self.pixels.setText(number_text(self._in_pixels(region).outline().length))
+
+    def _point_out_distance(self) -> None:
+        def measure(ends) -> None:
+            if ends[0] != ends[1]:
+                line = Line(name="known distance", points=tuple((z.real, z.imag) for z in ends))
+                self.pixels.setText(f"{self._in_pixels(line).outline().length:.6g}")
+            self._come_back()
+
+        self.window_.pick(2, "Click the two ends of the known distance; Esc gives up.", measure)
+
+    def _point_out_origin(self) -> None:
+        def take(places) -> None:
+            at = places[0]
+            line = Line(name="origin", points=((at.real, at.imag), (at.real + 1, at.imag)))
+            x, y = self._in_pixels(line).points[0]
+            down = self.desk.picture.session.run.reading.y_axis == "down"
+            for entry, value in zip(self.origin, (x, -y if down else y), strict=True):
+                entry.setText(f"{value:.6g}")
+            self._come_back()
+
+        self.window_.pick(1, "Click the place that becomes (0, 0); Esc gives up.", take)
+
+    def _come_back(self) -> None:
+        self.raise_()
+        self.activateWindow()
+
+    def _in_pixels(self, line):
+        """A line in the run's pixels, whatever units the session is in now."""
+        session = self.desk.picture.session
+        if _step(session, Calibrate) is None:
+            return line
+        alone = session.model_copy(update={"regions": (line,)}).in_folder(session.folder)
+        return set_calibration(alone, None).regions[0]
 
     def _use_distance(self) -> None:
         distance, pixels = read_number(self.distance.text()), read_number(self.pixels.text())
@@ -135,7 +178,8 @@ class CalibrationSheet(Sheet):
             self.problem.setText("Give the known distance and its length in pixels as positive numbers.")
             return
         self.problem.setText("")
-        _fill(self.scale, [distance / pixels] * 2)
+        for axis in self.axes.currentData():
+            _fill([self.scale[axis]], [distance / pixels])
 
     def apply(self) -> None:
         """Put calibration, axes and their uncertainties into the session in one edit."""

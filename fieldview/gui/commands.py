@@ -12,12 +12,27 @@ from fieldview.gui.theme import COLOUR_WORDS, REGION_COLOURS
 from fieldview.gui.tools import TOOLS
 from fieldview.gui.units_shown import CHOICES
 
+OTHER_SAMPLES = (
+    ("stirred_tank", "one vortex, in pixels with a calibration"),
+    ("hood_face", "flow through an opening"),
+)
+
 
 def run_commands() -> tuple[Command, ...]:
     return (
         Command("session.open", "&Open …", "Run", dialogs.open_files, "Ctrl+O", "open"),
         Command("session.open_folder", "Open &folder …", "Run", dialogs.open_folder),
-        Command("session.sample", "Try a sample", "Run", dialogs.open_sample),
+        Command("session.sample", "Try a sample", "Run", lambda w: w.desk.open_sample("fin_wake")),
+        *(
+            Command(
+                f"session.sample.{name}",
+                f"Sample: {words}",
+                "Run",
+                lambda w, name=name: w.desk.open_sample(name),
+                group="Other samples",
+            )
+            for name, words in OTHER_SAMPLES
+        ),
         Command(
             "sheet.reading",
             "How the files are read …",
@@ -28,6 +43,8 @@ def run_commands() -> tuple[Command, ...]:
         Command("session.save", "&Save", "Run", save, "Ctrl+S", "save", has_session, separated=True),
         Command("session.save_as", "Save &as …", "Run", dialogs.save_as, "Ctrl+Shift+S", enabled=has_session),
         Command("window.save_and_close", "Save and close", "", lambda w: w.save_and_close()),
+        Command("window.save_and_open", "Save and open", "", lambda w: w.save_and_open()),
+        Command("window.open_anyway", "Open without saving", "", lambda w: w.open_anyway()),
         Command("window.discard", "Close without saving", "", lambda w: w.discard()),
         Command("recovery.take", "Recover", "", lambda w: w.recover()),
         Command("recovery.drop", "Discard", "", lambda w: w.forget_lost()),
@@ -109,6 +126,8 @@ def view_commands() -> tuple[Command, ...]:
             separated=True,
             hint="The range is locked from frame to frame until you ask",
         ),
+        Command("view.colour_range", "Colour range …", "View", colour_range,
+                enabled=lambda p: p.map is not None),
         Command(
             "view.fit_arrows", "Fit arrow length to this frame", "View", fit_arrows, enabled=has_field
         ),
@@ -126,6 +145,8 @@ def view_commands() -> tuple[Command, ...]:
             checked=lambda p: p.shown.rejected_arrows,
             enabled=has_field,
         ),
+        Command("view.clear_seeds", "Clear streamlines", "View", lambda w: w.desk.show(seeds=()),
+                enabled=lambda p: bool(p.shown.seeds)),
         Command("frame.previous", "Previous frame", "View", lambda w: step(w, -1), "Left", "previous",
                 has_frames, scope="canvas", separated=True),
         Command("frame.next", "Next frame", "View", lambda w: step(w, 1), "Right", "next", has_frames,
@@ -321,6 +342,12 @@ def _has(picture: Picture, name: str) -> bool:
 
 def play(window) -> None:
     window.time_strip.toggle_playing()
+
+
+def colour_range(window) -> None:
+    from fieldview.gui.colour_sheet import ColourSheet
+
+    ColourSheet(window).show()
 
 
 def uncertainty(window) -> None:

@@ -13,7 +13,7 @@ from pydantic import ValidationError
 from PySide6.QtCore import QObject, QTimer, Signal
 
 from fieldview.compute.errors import InputError
-from fieldview.gui import work
+from fieldview.gui import places, work
 from fieldview.gui.jobs import LATER, Answer, Jobs
 from fieldview.gui.kept_view import shown_from_view, view_from_shown
 from fieldview.gui.picture import NOTHING, Notice, Picture
@@ -37,6 +37,8 @@ class Desk(QObject):
         self._soon = QTimer(self)
         self._soon.setSingleShot(True)
         self._soon.timeout.connect(self.redrawn)
+        self._recent: Path | None = None
+        self._before: tuple | None = None
         self.opening: tuple[Session, Path | None] | None = None
         self.after_saving: Callable[[], None] | None = None
 
@@ -48,6 +50,7 @@ class Desk(QObject):
         if not paths:
             return
         try:
+            self._recent = paths[0] if len(paths) == 1 else paths[0].parent
             if len(paths) == 1 and paths[0].suffix.lower() == ".json":
                 from fieldview.session.store import load_session
 
@@ -57,9 +60,14 @@ class Desk(QObject):
         except InputError as error:
             self.complain(str(error))
 
+    def open_sample(self, name: str) -> None:
+        """Put a sample among the user's own things, once, and open it."""
+        self.jobs.submit("sample", places.sample_session, name, lane="sample", title="Writing the sample")
+
     def adopt(self, session: Session, path: Path | None, *, saved: bool = True) -> None:
         """Take up a session: it becomes the first of a new history, and its run is opened."""
         self.jobs.cancel_all()
+        self._before = (self.picture, self.bench) if self.picture.run is not None else None
         self.bench = None
         self._pursuit.forget()
         shown = shown_from_view(session.view, self.picture.shown)
@@ -139,12 +147,12 @@ class Desk(QObject):
         self.commit(name, session)
 
     def add_region(self, region) -> None:
-        from fieldview.gui.theme import REGION_COLOURS
+        from fieldview.gui.theme import REGION_COLOURS, region_colour
 
         session = self.picture.session
         if session is None:
             return
-        used = [r.colour for r in session.regions]
+        used = [region_colour(r.colour, place) for place, r in enumerate(session.regions)]
         colour = next(
             (c for c in REGION_COLOURS if c not in used), REGION_COLOURS[len(used) % len(REGION_COLOURS)]
         )
@@ -229,6 +237,7 @@ class Desk(QObject):
         return self.jobs.idle and not self._soon.isActive()
 
     def dismiss(self) -> None:
+        self.opening = None if not self.jobs.is_pending("open") else self.opening
         if self.picture.notice is not None:
             self._put(self.picture.with_(notice=None))
 
@@ -250,6 +259,8 @@ class Desk(QObject):
                 follow()
         elif answer.kind == "export":
             self.tell(f"{answer.value.name} was written to {answer.value.parent}.")
+        elif answer.kind == "sample":
+            self.open([answer.value])
         elif answer.kind == "digests":
             if answer.value:
                 self.tell(f"{'; '.join(answer.value)}. The numbers are of the files as they are now.")
@@ -257,7 +268,9 @@ class Desk(QObject):
             self._pursuit.answered(answer)
 
     def _opened(self, opened: work.Opened) -> None:
-        self.bench = opened.bench
+        self.bench, self._before, self.opening = opened.bench, None, None
+        if self._recent is not None:
+            places.add_recent(self._recent)
         frame = min(self.picture.shown.frame, opened.facts.frames - 1)
         session = opened.session.in_folder(self.picture.session.folder)
         saved = session if self.picture.saved is not None else None
@@ -271,8 +284,7 @@ class Desk(QObject):
         if answer.kind == "open":
             offers = (("Answer …", "sheet.reading"),) if answer.questions else ()
             notice = Notice(answer.error, offers=offers)
-            kept = self.picture if self.picture.path is not None else Picture(shown=self.picture.shown)
-            self._put(kept.with_(notice=notice))
+            self._put(self._without_opening().with_(notice=notice, tasks=self.jobs.tasks))
             if answer.questions:
                 self.questioned.emit()
             return
@@ -280,12 +292,22 @@ class Desk(QObject):
             self.after_saving = None
         self.complain(answer.error)
 
+    def _without_opening(self) -> Picture:
+        """What the window shows where opening came to nothing: what was open before, if there was a run."""
+        if self._before is not None:
+            picture, self.bench = self._before
+            self._before = None
+            self._pursuit.forget()
+            return picture
+        return self.picture if self.picture.path is not None else Picture(shown=self.picture.shown)
+
     def cancel(self, kind: str) -> None:
         """Stop background work; what it was for is taken back, so that the window shows what is so."""
         self.jobs.cancel(kind)
         picture = self.picture
         if kind == "open":
-            self._put(Picture(shown=picture.shown))
+            self._put(self._without_opening().with_(tasks=self.jobs.tasks))
+            self.opening = None
         elif kind == "field" and picture.shown.source != "frame":
             self.show(source="frame")
         elif kind == "field" and picture.field is not None:

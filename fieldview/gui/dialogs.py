@@ -28,18 +28,6 @@ def open_folder(window) -> None:
     dialog.open()
 
 
-def open_sample(window) -> None:
-    """Write a sample run beside the user's other things, once, and open it."""
-    from fieldview.gui.places import sample_session
-
-    try:
-        window.open([sample_session()])
-    except OSError as error:
-        window.desk.complain(
-            f"The sample cannot be written ({error.strerror}); free some room and try again."
-        )
-
-
 def save_as(window) -> None:
     session, path = window.desk.picture.session, window.desk.picture.path
     name = path.name if path else _stem(session.run.files[0]) + ".session.json"

@@ -2,10 +2,40 @@
 
 from __future__ import annotations
 
-from PySide6.QtCore import Qt
-from PySide6.QtWidgets import QDialog, QLineEdit, QListWidget, QListWidgetItem, QVBoxLayout
+from PySide6.QtCore import QSize, Qt
+from PySide6.QtWidgets import (
+    QDialog,
+    QLineEdit,
+    QListWidget,
+    QListWidgetItem,
+    QStyledItemDelegate,
+    QVBoxLayout,
+)
 
 from fieldview.gui.actions import Actions
+from fieldview.gui.theme import ROW
+
+KEYS = Qt.ItemDataRole.UserRole + 1
+
+
+class _Row(QStyledItemDelegate):
+    """Rows of one height, each with its shortcut at the right."""
+
+    def sizeHint(self, option, index):
+        return QSize(0, ROW)
+
+    def initStyleOption(self, option, index):
+        super().initStyleOption(option, index)
+        option.features |= option.ViewItemFeature.HasDecoration  # titles stand in line, with icon or without
+        option.decorationSize = QSize(18, 18)
+
+    def paint(self, painter, option, index):
+        super().paint(painter, option, index)
+        painter.setPen(option.palette.placeholderText().color())
+        box = option.rect.adjusted(0, 0, -8, 0)
+        painter.drawText(
+            box, Qt.AlignmentFlag.AlignRight | Qt.AlignmentFlag.AlignVCenter, index.data(KEYS) or ""
+        )
 
 
 class Finder(QDialog):
@@ -26,6 +56,8 @@ class Finder(QDialog):
         self.entry.returnPressed.connect(self._run)
         self.list = QListWidget()
         self.list.setAccessibleName("Commands found")
+        self.list.setIconSize(QSize(18, 18))
+        self.list.setItemDelegate(_Row(self.list))
         self.list.itemActivated.connect(lambda _: self._run())
         column.addWidget(self.entry)
         column.addWidget(self.list)
@@ -40,8 +72,8 @@ class Finder(QDialog):
             action = self._actions[command.id]
             title = action.text().replace("&", "")
             if all(word in f"{title} {command.menu} {command.hint}".lower() for word in words):
-                keys = action.shortcut().toString()
-                item = QListWidgetItem(f"{title}    {keys}" if keys else title)
+                item = QListWidgetItem(title)
+                item.setData(KEYS, action.shortcut().toString())
                 item.setData(Qt.ItemDataRole.UserRole, command.id)
                 item.setIcon(action.icon())
                 if not action.isEnabled():

@@ -21,6 +21,8 @@ def view_from_shown(shown: Shown) -> dict:
     view = {name: getattr(shown, name) for name in _KEPT if getattr(shown, name) != getattr(Shown(), name)}
     if shown.levels:
         view["levels"] = {name: list(levels) for name, levels in sorted(shown.levels.items())}
+    if shown.seeds:
+        view["seeds"] = [[seed.real, seed.imag] for seed in shown.seeds]
     if shown.speed:
         view["speed"] = shown.speed
     return view
@@ -39,10 +41,15 @@ def shown_from_view(view: dict, before: Shown) -> Shown:
     levels = view.get("levels")
     if isinstance(levels, dict):
         taken["levels"] = {
-            str(name): (float(pair[0]), float(pair[1]))
-            for name, pair in levels.items()
-            if isinstance(pair, list) and len(pair) == 2 and all(isinstance(n, int | float) for n in pair)
+            str(name): (float(pair[0]), float(pair[1])) for name, pair in levels.items() if _is_pair(pair)
         }
+    seeds = view.get("seeds")
+    if isinstance(seeds, list):
+        taken["seeds"] = tuple(complex(*pair) for pair in seeds if _is_pair(pair))
     if isinstance(view.get("speed"), int | float):
         taken["speed"] = float(view["speed"])
     return Shown(tool=before.tool, **taken)
+
+
+def _is_pair(value) -> bool:
+    return isinstance(value, list) and len(value) == 2 and all(isinstance(n, int | float) for n in value)

@@ -40,6 +40,8 @@ class Shown:
         What numbers are shown in.
     trace : "circulation" or "flux"
         Which number of the chosen region is drawn over time.
+    seeds : tuple of complex
+        Points of the plane through which a streamline is drawn. [length]
     """
 
     frame: int = 0
@@ -59,6 +61,7 @@ class Shown:
     units: str = "session"
     drawer: str = "growth"
     trace: str = "circulation"
+    seeds: tuple[complex, ...] = ()
 
 
 @dataclass(frozen=True, eq=False)
@@ -122,6 +125,15 @@ class IsoLines:
     of: Field
     step: float
     lines: tuple[tuple[float, tuple[np.ndarray, ...]], ...]
+
+
+@dataclass(frozen=True, eq=False)
+class Streams:
+    """Streamlines of a field through these seeds, as complex arrays in the plane."""
+
+    of: Field
+    seeds: tuple[complex, ...]
+    lines: tuple[np.ndarray, ...]
 
 
 @dataclass(frozen=True, eq=False)
@@ -212,6 +224,7 @@ class Picture:
     shares: Mapping[int, float] = attribute(default_factory=lambda: NOTHING)
     traces: Mapping[int, Traced] = attribute(default_factory=lambda: NOTHING)
     curve: Curve | None = None
+    streams: Streams | None = None
     draft: Region | None = None
     draft_of: str | None = None
     draft_measured: Measured | None = None
@@ -273,6 +286,11 @@ class Picture:
     def iso_now(self) -> IsoLines | None:
         right = self.iso is not None and self.iso.of is self.field
         return self.iso if right and self.iso.name == self.shown.iso_lines else None
+
+    @property
+    def streams_now(self) -> Streams | None:
+        right = self.streams is not None and self.streams.of is self.field
+        return self.streams if right and self.streams.seeds == self.shown.seeds else None
 
     def with_(self, **changes) -> Picture:
         return replace(self, **changes)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import shutil
 from pathlib import Path
 
 import platformdirs
@@ -53,13 +54,18 @@ def add_recent(path: Path) -> None:
     remember(recent=[entry, *others][:RECENT_MOST])
 
 
-def sample_session() -> Path:
-    """The sample session the start page opens, written on first use."""
+def sample_session(name: str = "fin_wake") -> Path:
+    """A sample session among the user's own things, where it can be saved; written on first use."""
     from fieldview.publish.samples import write_sample
+    from fieldview.shipped import shipped_folder
 
     folder = platformdirs.user_data_path(APPLICATION) / "samples"
-    target = folder / "fin_wake.session.json"
+    target = folder / name / f"{name}.session.json"
     if not target.is_file():
         folder.mkdir(parents=True, exist_ok=True)
-        write_sample("fin_wake", folder)
+        shipped = shipped_folder("sample_sessions") / name
+        if shipped.is_dir():
+            shutil.copytree(shipped, folder / name, dirs_exist_ok=True)
+        else:
+            write_sample(name, folder)
     return target

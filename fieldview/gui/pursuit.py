@@ -37,6 +37,7 @@ class Pursuit:
             self._numbers(picture)
             self._map(picture)
             self._iso(picture)
+            self._streams(picture)
             self._curve(picture)
             self._cards(picture)
 
@@ -101,6 +102,16 @@ class Pursuit:
             self._desk.jobs.cancel("iso")
             return
         self._desk.jobs.submit("iso", _iso_of, picture.field, name, levels, lane="derive", title="Iso-lines")
+
+    def _streams(self, picture: Picture) -> None:
+        seeds = picture.shown.seeds
+        if not self._changed("streams", (picture.field, seeds)):
+            return
+        if not seeds:
+            self._desk.jobs.cancel("streams")
+            return
+        given = (picture.field, seeds)
+        self._desk.jobs.submit("streams", work.streams, *given, lane="derive", title="Streamlines")
 
     def _curve(self, picture: Picture) -> None:
         page, region = picture.shown.drawer, picture.selected
@@ -178,6 +189,9 @@ class Pursuit:
 
     def _got_iso(self, got) -> None:
         self._desk.update(iso=got)
+
+    def _got_streams(self, got) -> None:
+        self._desk.update(streams=got)
 
     def _got_curve(self, got) -> None:
         self._desk.update(curve=got)

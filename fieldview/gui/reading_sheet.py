@@ -8,6 +8,7 @@ from PySide6.QtWidgets import (
     QComboBox,
     QDialogButtonBox,
     QFormLayout,
+    QGridLayout,
     QHBoxLayout,
     QTableView,
     QVBoxLayout,
@@ -47,6 +48,9 @@ UNIT_TITLES = {
 }
 
 
+ROLES_ABREAST = 2
+
+
 class ReadingSheet(Sheet):
     """Asks how files are read; opens them once nothing that must be known is missing."""
 
@@ -76,8 +80,9 @@ class ReadingSheet(Sheet):
         table.setMinimumHeight(150)
         left.addWidget(table)
         left.addWidget(label("Columns", "heading"))
-        self.roles_form = QFormLayout()
-        left.addLayout(self.roles_form)
+        self.roles_grid = QGridLayout()
+        self.roles_grid.setHorizontalSpacing(8)
+        left.addLayout(self.roles_grid)
         self.roles: dict[str, QComboBox] = {}
         left.addWidget(label("Units, senses, times", "heading"))
         left.addLayout(self._answers())
@@ -85,7 +90,10 @@ class ReadingSheet(Sheet):
         both.addWidget(self._preview(), 1)
         self.open_button = self.buttons.addButton("Open", QDialogButtonBox.ButtonRole.ApplyRole)
         self.open_button.clicked.connect(self.open_files)
-        self.buttons.addButton(QDialogButtonBox.StandardButton.Cancel).clicked.connect(self.close)
+        cancel = self.buttons.addButton(QDialogButtonBox.StandardButton.Cancel)
+        cancel.clicked.connect(self.close)
+        for button in (self.open_button, cancel):
+            button.setAutoDefault(False)  # Return finishes an answer, no more
         self.jobs = Jobs(self)
         self.jobs.answered.connect(self._answered)
         self.finished.connect(lambda _: self.jobs.close())
@@ -99,6 +107,7 @@ class ReadingSheet(Sheet):
         for key, known in UNITS.items():
             box = QComboBox()
             box.setEditable(True)
+            box.setCompleter(None)  # "m" must not become "mm" while it is typed
             box.addItems(["", *known])
             box.setAccessibleName(UNIT_TITLES[key])
             box.setObjectName(f"reading.{key}")
@@ -134,11 +143,14 @@ class ReadingSheet(Sheet):
         self.canvas.setAccessibleName("The first frame as it would be read")
         self.showing = Showing(self.canvas)
         self.showing.set_theme(self.theme)
-        column.addWidget(self.canvas, 1)
         self.doubts = label("", wrap=True)
         self.doubts.setObjectName("reading_doubts")
         self.doubts.setAccessibleName("What was found, and every doubt")
         column.addWidget(self.doubts)
+        self.canvas.setMinimumHeight(260)
+        self.canvas.hide()
+        column.addWidget(self.canvas, 1)
+        column.addStretch()
         return box
 
     # -- the answers ---------------------------------------------------------------------------------
@@ -215,10 +227,10 @@ class ReadingSheet(Sheet):
                 self.roles[name].setCurrentIndex(self.roles[name].findData(role))
 
     def _ask_columns(self, found: reading_work.Found) -> None:
-        while self.roles_form.rowCount():
-            self.roles_form.removeRow(0)
+        while self.roles_grid.count():
+            self.roles_grid.takeAt(0).widget().deleteLater()
         self.roles = {}
-        for column in found.columns:
+        for number, column in enumerate(found.columns):
             box = QComboBox()
             box.setAccessibleName(f"Role of column {column.name}")
             box.setObjectName(f"reading.column.{column.name}")
@@ -227,7 +239,10 @@ class ReadingSheet(Sheet):
                 box.addItem(role.replace("_", " "), role)
             box.activated.connect(self.look)
             unit = f" [{column.unit}]" if column.unit else ""
-            self.roles_form.addRow(label(f"{column.name}{unit}"), box)
+            row, place = divmod(number, ROLES_ABREAST)
+            self.roles_grid.addWidget(label(f"{column.name}{unit}"), row, 2 * place)
+            self.roles_grid.addWidget(box, row, 2 * place + 1)
+            self.roles_grid.setColumnStretch(2 * place + 1, 1)
             self.roles[column.name] = box
 
     def _show(self, found: reading_work.Found) -> None:
@@ -240,6 +255,7 @@ class ReadingSheet(Sheet):
             picture = Picture(field=found.field, map=found.map).showing(
                 levels=found.levels, speed=found.speed
             )
+        self.canvas.setVisible(found.field is not None)
         self.showing.draw(picture)
 
     def open_files(self) -> None:

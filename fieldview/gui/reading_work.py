@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from dataclasses import field as attribute
 from typing import Any
 
 from fieldview.compute.errors import InputError
@@ -30,7 +31,7 @@ class Found:
     sentences: tuple[str, ...]
     field: Field | None = None
     map: MapOf | None = None
-    levels: Mapping[str, tuple[float, float]] = field(default_factory=dict)
+    levels: Mapping[str, tuple[float, float]] = attribute(default_factory=dict)
     speed: float | None = None
 
 

@@ -40,6 +40,8 @@ class Sheet(QDialog):
         scroll.setWidgetResizable(True)
         scroll.setWidget(page)
         scroll.setFocusPolicy(Qt.FocusPolicy.NoFocus)
+        scroll.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
+        self._page = page
         outer.addWidget(scroll, 1)
         self.problem = label("", "muted", wrap=True)
         self.problem.setObjectName("sheet_problem")
@@ -51,6 +53,15 @@ class Sheet(QDialog):
 
     def draw(self, picture) -> None:
         """Show what the picture has to say."""
+
+    def showEvent(self, event):
+        # wide enough for every entry, and as high as the page where the screen allows it
+        wanted = self._page.minimumSizeHint()
+        room = self.screen().availableSize()
+        wide = min(max(self.width(), wanted.width() + 44), room.width() - 40)
+        high = min(max(self.height(), wanted.height() + 120), room.height() - 60)
+        self.resize(wide, high)
+        super().showEvent(event)
 
     def _redraw(self):
         self.draw(self.desk.picture)

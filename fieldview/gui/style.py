@@ -87,6 +87,7 @@ QComboBox QAbstractItemView {{
     selection-color: {text};
 }}
 QAbstractItemView {{ background: {panel}; border: none; outline: none; }}
+QListWidget::item:selected {{ background: {chosen}; color: {text}; }}
 QTableView {{
     gridline-color: transparent; selection-background-color: {chosen}; selection-color: {text};
 }}

@@ -116,6 +116,12 @@ def colour_table(theme: Theme, kind: str) -> np.ndarray:
     return pg.colormap.get(name).getLookupTable(start=low, stop=high, nPts=256)[:, :3].astype(np.uint8)
 
 
+def table_for_range(theme: Theme, kind: str, low: float, high: float) -> np.ndarray:
+    """The colours for a range: the two colours of the signs only where zero is in its middle."""
+    even = kind != "signed" or abs(low + high) <= 1e-6 * (high - low)
+    return colour_table(theme, kind if even else "unsigned")
+
+
 def diverging(low: str, middle: str, high: str) -> np.ndarray:
     """256 colours from ``low`` over ``middle`` to ``high``, in even steps of CIE L*a*b* along both arms."""
     ends = [_to_lab(colour) for colour in (low, middle, high)]

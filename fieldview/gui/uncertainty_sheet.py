@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
-from PySide6.QtWidgets import QComboBox, QDialogButtonBox, QFormLayout
+from PySide6.QtWidgets import QComboBox, QDialogButtonBox, QFormLayout, QHBoxLayout, QPushButton, QVBoxLayout
 
 from fieldview.compute.errors import InputError
 from fieldview.gui.desk import checked
 from fieldview.gui.forms import number_text, read_number
 from fieldview.gui.panels.base import label
+from fieldview.gui.panels.budget import Budget
+from fieldview.gui.panels.regions import coverage_choice
 from fieldview.gui.sheets import Sheet, in_a_row, number_entry
 from fieldview.session.models import Uncertainties
 
@@ -38,7 +40,7 @@ class UncertaintySheet(Sheet):
             "All are standard uncertainties (k = 1). What is left empty counts as not stated, and every "
             "number says so.",
         )
-        self.resize(620, 600)
+        self.resize(980, 620)
         form = QFormLayout()
         form.setVerticalSpacing(6)
         self.source = QComboBox()
@@ -59,21 +61,33 @@ class UncertaintySheet(Sheet):
             self.overlap.addItem(f"{percent} % overlap", nodes)
         self.overlap.activated.connect(self._overlap_chosen)
         form.addRow(label("Correlated over [nodes], x and y"), in_a_row(*self.nodes, self.overlap))
-        note = "Window size over spacing. Left out, errors count as independent: U is then a lower bound."
+        note = (
+            "Window size over spacing: 1 / (1 − overlap). Left out, errors count as independent: U is then a "
+            "lower bound."
+        )
         form.addRow("", label(note, "muted", wrap=True))
         self.window_size = [number_entry("Window along x"), number_entry("Window along y")]
         self.window_label = label("Measuring window")
-        form.addRow(self.window_label, in_a_row(*self.window_size))
+        self.by_window = QPushButton("Nodes from it")
+        self.by_window.setAccessibleName("Correlated nodes from the measuring window and the spacing")
+        self.by_window.setToolTip("Correlated nodes = measuring window over node spacing, along each axis")
+        self.by_window.setAutoDefault(False)
+        self.by_window.clicked.connect(self._nodes_from_window)
+        form.addRow(self.window_label, in_a_row(*self.window_size, self.by_window))
         note = "Left out, it is correlated nodes × spacing; 0 is a point probe."
         form.addRow("", label(note, "muted", wrap=True))
         form.addRow(label("Common to every vector", "heading"))
-        self.parts = {}
+        self.parts, self.part_labels = {}, {}
         for key, title, sentence in PARTS:
             self.parts[key] = number_entry(title)
-            form.addRow(label(title), self.parts[key])
+            self.part_labels[key] = label(title)
+            form.addRow(self.part_labels[key], self.parts[key])
             form.addRow("", label(sentence, "muted", wrap=True))
-        self.column.addLayout(form)
-        self.column.addStretch()
+        both = QHBoxLayout()
+        both.setSpacing(20)
+        both.addLayout(form, 3)
+        both.addLayout(self._shown_budget(), 2)
+        self.column.addLayout(both)
         apply = self.buttons.addButton("Apply", QDialogButtonBox.ButtonRole.ApplyRole)
         close = self.buttons.addButton(QDialogButtonBox.StandardButton.Close)
         apply.setDefault(True)
@@ -82,7 +96,27 @@ class UncertaintySheet(Sheet):
         self._shown: Uncertainties | None = None
         self.draw(self.desk.picture)
 
+    def _shown_budget(self) -> QVBoxLayout:
+        """Beside the entries: the factor k of what is shown, and what they come to for the chosen region."""
+        column = QVBoxLayout()
+        self.coverage = coverage_choice(self.desk)
+        row = QHBoxLayout()
+        row.addWidget(label("Shown everywhere with"))
+        row.addWidget(self.coverage)
+        row.addStretch()
+        column.addLayout(row)
+        column.addWidget(label("k = 1 is the standard uncertainty; 2 covers about 95 %.", "muted", wrap=True))
+        self.of_region = label("", "heading")
+        column.addWidget(self.of_region)
+        self.budget = Budget()
+        self.budget.theme = self.theme
+        column.addWidget(self.budget, 1)
+        return column
+
     def draw(self, picture) -> None:
+        self.coverage.setCurrentIndex(self.coverage.findData(picture.shown.coverage))
+        self.of_region.setText(f"Budget of {picture.selected.name}" if picture.selected else "Budget")
+        self.budget.draw(picture)
         session = picture.session
         if session is None or session.error_model is self._shown:
             return
@@ -90,6 +124,7 @@ class UncertaintySheet(Sheet):
         length, time = (session.units or "m, s").split(", ")
         self.sigma_label.setText(f"sigma of u, v, w [{length}/{time}]")
         self.window_label.setText(f"Measuring window [{length}], x and y")
+        self.part_labels["zero_offset"].setText(f"Velocity offset [{length}/{time}]")
         sigma = model.sigma
         source = sigma if isinstance(sigma, str) else "none" if sigma is None else "given"
         self.source.setCurrentIndex(self.source.findData(source))
@@ -111,6 +146,15 @@ class UncertaintySheet(Sheet):
 
     def _source_chosen(self, *_):
         self.sigma_row.setEnabled(self.source.currentData() == "given")
+
+    def _nodes_from_window(self) -> None:
+        field = self.desk.picture.field
+        if field is None:
+            return
+        sizes = [read_number(entry.text()) for entry in self.window_size]
+        for entry, size, spacing in zip(self.nodes, sizes, field.grid.spacing, strict=True):
+            if isinstance(size, float) and spacing > 0:
+                entry.setText(number_text(round(size / spacing, 6)))
 
     def _overlap_chosen(self, place: int):
         nodes = self.overlap.itemData(place)

@@ -36,6 +36,7 @@ from fieldview.gui.recovery import Recovery, lost_sessions
 from fieldview.gui.status_line import StatusLine
 from fieldview.gui.style import style_sheet
 from fieldview.gui.tools import TOOLS
+from fieldview.gui.tools.picking import Pick
 from fieldview.shipped import shipped_folder
 
 WORKING_KEYS = (Qt.Key.Key_Return, Qt.Key.Key_Enter, Qt.Key.Key_Escape, Qt.Key.Key_Backspace)
@@ -55,6 +56,8 @@ class MainWindow(QMainWindow):
         self.recovery, self._lost = Recovery(), lost_sessions()
         self._kept = self._kept_saved = None
         self._asked = False
+        self._picking: Pick | None = None
+        self._waiting: list[Path] = []
         self.theme = theme.of_desktop()
         self.actions_table = Actions(self, all_commands())
         self._build()
@@ -81,11 +84,17 @@ class MainWindow(QMainWindow):
         return self.desk.idle
 
     def open(self, paths) -> None:
-        """Open a session file or the files of a run."""
+        """Open a session file or the files of a run; asks first where changes would be lost."""
         paths = [Path(path) for path in paths]
-        if paths:
-            self.desk.open(paths)
-            places.add_recent(paths[0] if len(paths) == 1 else paths[0].parent)
+        if paths and self.desk.picture.unsaved:
+            self._waiting = paths
+            self.desk.complain(
+                f"There are changes that are not saved; opening {paths[0].name} would drop them.",
+                ("Save and open", "window.save_and_open"),
+                ("Open without saving", "window.open_anyway"),
+            )
+            return
+        self.desk.open(paths)
 
     # -- building ------------------------------------------------------------------------------------
 
@@ -158,7 +167,7 @@ class MainWindow(QMainWindow):
     def _redraw(self):
         picture = self.desk.picture
         self._pages.setCurrentIndex(0 if picture.session is None else 1)
-        self.canvas.tool = self.tools[picture.shown.tool]
+        self.canvas.tool = self._picking or self.tools[picture.shown.tool]
         self.showing.draw(picture)
         for panel in self._panels:
             panel.draw(picture)
@@ -228,14 +237,29 @@ class MainWindow(QMainWindow):
         self.desk.jobs.close()
         event.accept()
 
+    def pick(self, count: int, hint: str, done) -> None:
+        """Let so many places be clicked on the canvas, then call ``done`` with them; Esc gives up."""
+
+        def picked(places) -> None:
+            self._picking = None
+            self._redraw()
+            self.canvas.show_sketch(None)
+            if places is not None:
+                done(places)
+
+        self._picking = Pick(self.desk, count, hint, picked)
+        self.activateWindow()
+        self.canvas.setFocus()
+        self._redraw()
+
     def ask_reading(self) -> None:
         """Open the reading sheet for what could not be opened, or for the run that is open."""
         picture = self.desk.picture
-        if picture.run is not None:
-            session, path, why = picture.session, picture.path, ""
-        elif self.desk.opening is not None:
+        if self.desk.opening is not None:
             session, path = self.desk.opening
             why = picture.notice.text if picture.notice is not None else ""
+        elif picture.run is not None:
+            session, path, why = picture.session, picture.path, ""
         else:
             return
         from fieldview.gui.reading_sheet import ReadingSheet
@@ -246,6 +270,16 @@ class MainWindow(QMainWindow):
         """Save, then close once the file is written."""
         self.desk.after_saving = self.close
         self.actions_table.run("session.save")
+
+    def save_and_open(self) -> None:
+        """Save, then open what was asked for."""
+        self.desk.after_saving = self.open_anyway
+        self.actions_table.run("session.save")
+
+    def open_anyway(self) -> None:
+        """Open what was asked for, whatever becomes of the changes."""
+        paths, self._waiting = self._waiting, []
+        self.desk.open(paths)
 
     def discard(self) -> None:
         """Close and forget the changes."""

@@ -14,7 +14,7 @@ import numpy as np
 from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field, Status
 from fieldview.gui.jobs import Progress
-from fieldview.gui.picture import Basis, Card, Curve, IsoLines, MapOf, Measured, RunFacts, Traced
+from fieldview.gui.picture import Basis, Card, Curve, IsoLines, MapOf, Measured, RunFacts, Streams, Traced
 from fieldview.session.models import RunSource, Session
 
 THUMBNAIL = (96, 48)
@@ -224,6 +224,13 @@ def iso_lines(field: Field, name: str, step: float) -> IsoLines | None:
         )
         found.append((k * step, pieces))
     return IsoLines(name, field, step, tuple(found))
+
+
+def streams(field: Field, seeds: tuple[complex, ...]) -> Streams:
+    """The streamlines through the seeds."""
+    from fieldview.compute.streamlines import streamlines
+
+    return Streams(field, seeds, tuple(streamlines(field, seeds)))
 
 
 def measured_shares(bench: Any, frames) -> Iterator[tuple[int, float] | Progress]:

@@ -5,7 +5,8 @@ import json
 import pytest
 from PySide6.QtCore import QMimeData, QPointF, Qt, QUrl
 from PySide6.QtGui import QDragEnterEvent, QDropEvent
-from PySide6.QtWidgets import QApplication, QWidget
+from PySide6.QtTest import QTest
+from PySide6.QtWidgets import QApplication, QPushButton, QWidget
 
 from tests.gui.conftest import FRAMES, settle
 
@@ -114,3 +115,47 @@ def test_what_was_open_is_remembered(open_window, session_file, window):
     start = open_window().start
     names = [b.text() for b in start.findChildren(QWidget) if hasattr(b, "text")]
     assert any(session_file.name in name for name in names)
+
+
+def test_opening_over_unsaved_work_asks(window, run_folder, qtbot):
+    from fieldview.session.regions import Circle
+
+    window.desk.add_region(Circle(name="mine", centre=(0.03, 0.02), radius=0.005))
+    changed = window.session
+    window.open([run_folder / "f1.csv"])
+    assert window.session == changed
+    assert "not saved" in window.banner.text.text()
+    button = next(b for b in window.banner.findChildren(QPushButton) if b.text() == "Open without saving")
+    QTest.mouseClick(button, Qt.MouseButton.LeftButton)
+    settle(qtbot, window)
+    assert window.session.regions == ()
+    assert window.desk.picture.run.frames == 1
+
+
+def test_work_is_saved_first_when_asked_to(window, session_file, run_folder, qtbot):
+    from fieldview.session.regions import Circle
+    from fieldview.session.store import load_session
+
+    window.desk.add_region(Circle(name="mine", centre=(0.03, 0.02), radius=0.005))
+    window.open([run_folder / "f1.csv"])
+    button = next(b for b in window.banner.findChildren(QPushButton) if b.text() == "Save and open")
+    QTest.mouseClick(button, Qt.MouseButton.LeftButton)
+    settle(qtbot, window)
+    assert [r.name for r in load_session(session_file).regions] == ["core", "mine"]
+    assert window.desk.picture.run.frames == 1
+
+
+def test_what_reading_assumed_is_said_for_loose_files(open_window, run_folder):
+    window = open_window(run_folder / "f0.csv")
+    assert "taken to" in window.banner.text.text()
+    assert not window.desk.picture.notice.grave
+    assert "remark" in window.ledger._run_line.detail.text()
+
+
+def test_a_sample_opens_from_the_start_page(open_window, qtbot):
+    window = open_window()
+    button = window.findChild(QPushButton, "start.session.sample")
+    QTest.mouseClick(button, Qt.MouseButton.LeftButton)
+    settle(qtbot, window)
+    assert window.desk.picture.run.frames == 48
+    assert window.desk.picture.measured_of(window.session.regions[0]).row["circulation"]["value"] > 0

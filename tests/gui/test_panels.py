@@ -1,11 +1,14 @@
 """Ledger, quantities, readout and time strip."""
 
+import threading
+import time
+
 import numpy as np
-import pytest
 from PySide6.QtCore import Qt
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QLineEdit
 
+from fieldview.compute.field import Status
 from fieldview.gui.panels.quantities import CARD
 from fieldview.session.replay import Workbench, history
 from fieldview.session.steps import Fill, MedianTest, SpreadTest
@@ -199,12 +202,97 @@ def test_regions_are_followed_over_the_run(window, qtbot):
     assert [value for _, value, _ in found] == printed
 
 
-@pytest.mark.parametrize("source", ["mean"])
-def test_the_mean_is_shown_as_a_frame_like_any_other(window, qtbot, source):
+def test_the_mean_is_shown_as_a_frame_like_any_other(window, qtbot):
     from fieldview.session.measure import measure
 
-    QTest.mouseClick(window.time_strip._sources[source], Qt.MouseButton.LeftButton)
+    QTest.mouseClick(window.time_strip._sources["mean"], Qt.MouseButton.LeftButton)
     settle(qtbot, window)
     printed = measure(window.session, frames="mean")[0]["regions"][0]
     shown = window.desk.picture.measured_of(window.session.regions[0]).row
-    assert shown["circulation"] == printed["circulation"]
+    assert shown == printed
+
+
+def test_the_fluctuation_is_the_frame_less_the_mean(window, qtbot):
+    frames = []
+    for frame in range(FRAMES):
+        window.desk.go_to(frame)
+        settle(qtbot, window)
+        frames.append(window.desk.picture.field)
+    QTest.mouseClick(window.time_strip._sources["fluctuation"], Qt.MouseButton.LeftButton)
+    settle(qtbot, window)
+    measured = [np.where(f.status == Status.MEASURED, f.u, np.nan) for f in frames]
+    expected = frames[-1].u - np.ma.masked_invalid(measured).mean(axis=0).filled(np.nan)
+    np.testing.assert_allclose(window.desk.picture.field.u, expected, atol=1e-12)
+    assert "less the mean" in window.status.frame.text()
+    window.desk.go_to(0)
+    settle(qtbot, window)
+    assert window.desk.picture.field_frame == 0
+
+
+def test_work_over_the_run_shows_its_progress_and_can_be_cancelled(window, qtbot, monkeypatch):
+    from fieldview.gui import status_line, work
+
+    began = threading.Event()
+
+    def endless(bench, source, as_of, report):
+        while True:
+            began.set()
+            report(0.25)
+            time.sleep(0.005)
+
+    monkeypatch.setattr(work, "over_run", endless)
+    monkeypatch.setattr(status_line, "PATIENCE", 0.0)
+    before = window.desk.picture.field
+    QTest.mouseClick(window.time_strip._sources["mean"], Qt.MouseButton.LeftButton)
+    qtbot.waitUntil(lambda: began.is_set() and window.status.work.cancel.isVisible())
+    qtbot.waitUntil(lambda: "left" in window.status.work.text.text())
+    QTest.mouseClick(window.status.work.cancel, Qt.MouseButton.LeftButton)
+    settle(qtbot, window)
+    assert window.desk.picture.shown.source == "frame"
+    assert window.desk.picture.field is not None and window.desk.picture.field_frame == 0
+    assert np.array_equal(window.desk.picture.field.u, before.u, equal_nan=True)
+
+
+def test_the_trace_shows_circulation_or_flux(window, qtbot):
+    from fieldview.gui.panels.traces import trace_of
+    from fieldview.session.measure import measure
+
+    window.desk.show(selected="core", drawer="over_time")
+    window.desk.follow()
+    settle(qtbot, window)
+    box = window.time_strip.trace
+    box.setFocus()
+    QTest.keyClick(box, Qt.Key.Key_Down)
+    box.activated.emit(1)
+    printed = [f["regions"][0]["flux"]["value"] for f in measure(window.session)]
+    assert [value for _, value, _ in trace_of(window.desk.picture, "core")] == printed
+    assert window.drawer.plot.getAxis("left").labelText.startswith("Φ")
+
+
+def test_a_row_opens_to_its_budget(window, qtbot):
+    view = window.regions.view
+    view.setFocus()
+    view.setCurrentIndex(window.regions.model.index(0, 1))
+    QTest.keyClick(view, Qt.Key.Key_Return)
+    assert window.desk.picture.shown.drawer == "budget"
+    settle(qtbot, window)
+
+
+def test_a_colour_range_is_typed(window, qtbot):
+    from fieldview.gui.colour_sheet import ColourSheet
+
+    action(window, "view.colour_range").trigger()
+    sheet = window.findChild(ColourSheet)
+    for entry, text in ((sheet.low, "-5"), (sheet.high, "20")):
+        entry.selectAll()
+        QTest.keyClicks(entry, text)
+    QTest.keyClick(sheet.high, Qt.Key.Key_Return)
+    assert window.desk.picture.shown.levels["vorticity"] == (-5.0, 20.0)
+    entry = sheet.low
+    entry.selectAll()
+    QTest.keyClicks(entry, "30")
+    QTest.keyClick(entry, Qt.Key.Key_Return)
+    assert "first below the last" in sheet.problem.text()
+    assert window.desk.picture.shown.levels["vorticity"] == (-5.0, 20.0)
+    sheet.close()
+    settle(qtbot, window)

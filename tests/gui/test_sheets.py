@@ -10,7 +10,7 @@ from fieldview.gui.uncertainty_sheet import UncertaintySheet
 from fieldview.session.models import RunSource, Session
 from fieldview.session.regions import Circle, Line
 from fieldview.session.store import save_session
-from tests.gui.conftest import action, settle, vortex_frame
+from tests.gui.conftest import action, click, key, settle, vortex_frame
 
 
 def typed(entry: QLineEdit, text: str) -> None:
@@ -127,3 +127,54 @@ def test_a_reflection_says_what_becomes_of_the_vorticity(window, qtbot):
     assert "clockwise (−) now and stays so" in sheet.sign.text()
     assert before > 0
     sheet.buttons.button(QDialogButtonBox.StandardButton.Close).click()
+
+
+def test_a_distance_and_the_origin_are_clicked_on_the_canvas(pixel_window, qtbot):
+    window, first = pixel_window, pixel_window.session
+    action(window, "sheet.calibration").trigger()
+    sheet = window.findChild(CalibrationSheet)
+    press(sheet, "Click on the canvas")
+    click(window, 100, 200)
+    click(window, 500, 200)
+    assert float(sheet.pixels.text()) == pytest.approx(400, abs=2)
+    assert window.session == first, "pointing out a distance changes nothing"
+    typed(sheet.distance, "40")
+    press(sheet, "Use")
+    typed(sheet.pulse, "2.5")
+    press(sheet, "Click")
+    key(window, Qt.Key.Key_Escape)
+    assert sheet.origin[0].text() == "", "Esc gives up"
+    press(sheet, "Click")
+    click(window, 320, 240)
+    column, row = (float(entry.text()) for entry in sheet.origin)
+    assert (column, row) == (pytest.approx(320, abs=1), pytest.approx(240, abs=1))
+    press(sheet, "Apply")
+    settle(qtbot, window)
+    assert window.session.regions[0].centre == (pytest.approx(0, abs=2e-4), pytest.approx(0, abs=2e-4))
+    # pointed out again in metres, the distance still reads in pixels
+    press(sheet, "Click on the canvas")
+    click(window, -0.01, 0.0)
+    click(window, 0.02, 0.0)
+    assert float(sheet.pixels.text()) == pytest.approx(300, abs=3)
+    sheet.close()
+
+
+def test_correlated_nodes_follow_from_the_measuring_window(window, errors_sheet, qtbot):
+    for entry in errors_sheet.window_size:
+        typed(entry, "0.004")
+    press(errors_sheet, "Nodes from it")
+    press(errors_sheet, "Apply")
+    assert window.session.error_model.correlation_nodes == pytest.approx(2.0), "4 mm over 2 mm"
+    assert window.session.error_model.window == 0.004
+    settle(qtbot, window)
+
+
+def test_the_sheet_shows_the_budget_and_the_coverage(window, errors_sheet, qtbot):
+    window.desk.show(selected="core")
+    assert errors_sheet.of_region.text() == "Budget of core"
+    assert errors_sheet.budget.model.rows[0][0].text == "scatter of the vectors"
+    errors_sheet.coverage.setFocus()
+    QTest.keyClick(errors_sheet.coverage, Qt.Key.Key_Down)
+    errors_sheet.coverage.activated.emit(1)
+    assert window.desk.picture.shown.coverage == 2.0
+    assert errors_sheet.budget.model.titles[1] == "± U, k = 2"

@@ -84,6 +84,52 @@ class LinesLayer(Layer):
                 painter.drawPolyline(polygon(lens.to_pixels(piece)))
 
 
+class StreamLayer(Layer):
+    """Streamlines with a head half way along, and their seeds."""
+
+    def __init__(self, view_box, lens_now):
+        super().__init__(view_box, lens_now, -5)
+        self._seeds: tuple[complex, ...] = ()
+        self._lines: tuple[np.ndarray, ...] = ()
+        self._theme: Theme | None = None
+
+    def show(self, seeds, lines, theme: Theme) -> None:
+        self._seeds, self._lines, self._theme = seeds, lines, theme
+        self.update()
+
+    def paint(self, painter, option, widget=None):
+        if not self._seeds:
+            return
+        painter.setRenderHint(QPainter.RenderHint.Antialiasing)
+        lens = self.lens_now()
+        halo = QColor(self._theme.canvas)
+        halo.setAlphaF(0.6)
+        for line in self._lines:
+            if line.size > 1:
+                at = lens.to_pixels(line)
+                path = QPainterPath()
+                path.addPolygon(polygon(at))
+                painter.setBrush(Qt.BrushStyle.NoBrush)
+                painter.strokePath(path, QPen(halo, 4.0))
+                painter.strokePath(path, QPen(QColor(self._theme.accent), 1.8))
+                self._head(painter, at)
+        painter.setPen(QPen(QColor(self._theme.canvas), 1.0))
+        painter.setBrush(QColor(self._theme.accent))
+        for z in lens.to_pixels(np.array(self._seeds)):
+            painter.drawEllipse(QPointF(z.real, z.imag), 3.2, 3.2)
+
+    def _head(self, painter, at: np.ndarray) -> None:
+        middle = at.size // 2
+        along = at[middle] - at[middle - 1]
+        if along == 0:
+            return
+        along = along / abs(along)
+        painter.setPen(QPen(QColor(self._theme.accent), 1.8))
+        for side in (1 + 0.6j, 1 - 0.6j):
+            barb = at[middle] - 8 * along * side
+            painter.drawLine(QPointF(at[middle].real, at[middle].imag), QPointF(barb.real, barb.imag))
+
+
 @dataclass(frozen=True, eq=False)
 class Flow:
     """The vectors as they are to be drawn."""

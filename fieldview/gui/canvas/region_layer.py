@@ -129,31 +129,26 @@ def _beside(at: np.ndarray, box: QRectF, lens: Lens, taken: list[QRectF], others
     inside = lens.rect.adjusted(4, 4, -4, -4)
     columns = (right + 8, left - wide - 8, (left + right - wide) / 2, left, right - wide)
     rows = (top, bottom - high, top - high - 8, bottom + 8, top - 2 * high - 12, bottom + high + 12)
-    places = [
-        QPointF(
-            min(max(x, inside.left()), max(inside.left(), inside.right() - wide)),
-            min(max(y, inside.top()), max(inside.top(), inside.bottom() - high)),
-        )
-        for y in rows
-        for x in columns
-    ]
+    x = np.clip(np.tile(columns, len(rows)), inside.left(), max(inside.left(), inside.right() - wide))
+    y = np.clip(np.repeat(rows, len(columns)), inside.top(), max(inside.top(), inside.bottom() - high))
+    apart = np.hypot(x + wide / 2 - around.center().x(), y + high / 2 - around.center().y())
+    hidden = 200 * _covered(x, y, box, taken) + _covered(x, y, box, [*others, around]) + 4 * apart
+    best = int(np.argmin(hidden))
+    return QPointF(x[best], y[best])
 
-    def hidden(place: QPointF) -> float:
-        there = QRectF(place, box.size())
-        over_labels = sum(_area(there.intersected(other)) for other in taken)
-        over_regions = sum(_area(there.intersected(other)) for other in [*others, around])
-        apart = there.center() - around.center()
-        return 200 * over_labels + over_regions + 4 * abs(complex(apart.x(), apart.y()))
 
-    return min(places, key=hidden)
+def _covered(x: np.ndarray, y: np.ndarray, box: QRectF, others: list[QRectF]) -> np.ndarray:
+    """Area that a box at each of these places shares with others. [px²]"""
+    area = np.zeros(x.size)
+    for other in others:
+        wide = np.minimum(x + box.width(), other.right()) - np.maximum(x, other.left())
+        high = np.minimum(y + box.height(), other.bottom()) - np.maximum(y, other.top())
+        area += np.clip(wide, 0, None) * np.clip(high, 0, None)
+    return area
 
 
 def _bounds(at: np.ndarray) -> QRectF:
     return QRectF(QPointF(at.real.min(), at.imag.min()), QPointF(at.real.max() + 1e-3, at.imag.max() + 1e-3))
-
-
-def _area(box: QRectF) -> float:
-    return max(0.0, box.width()) * max(0.0, box.height())
 
 
 def _direction(painter: QPainter, at: np.ndarray, pen: QPen) -> None:

@@ -14,6 +14,7 @@ from fieldview.gui.canvas.region_layer import Marked
 from fieldview.gui.canvas.view import Canvas, level_indices
 from fieldview.gui.picture import MapOf, Picture
 from fieldview.gui.region_text import label_lines
+from fieldview.gui.shaping import handles
 from fieldview.gui.theme import LIGHT, Theme
 from fieldview.gui.units_shown import UnitView
 from fieldview.publish import wording
@@ -58,6 +59,9 @@ class Showing:
         levels = shown.levels.get(picture.map.name) if picture.map else None
         if self._new("map", picture.map, levels, picture.field):
             self._draw_map(picture.map, levels)
+        if self._new("streams", shown.seeds, picture.streams_now):
+            lines = picture.streams_now.lines if picture.streams_now else ()
+            canvas.stream_layer.show(shown.seeds, lines, self._theme)
         if self._new("iso", picture.iso_now):
             lines = picture.iso_now.lines if picture.iso_now else ()
             canvas.lines_layer.show(lines, self._theme)
@@ -76,6 +80,7 @@ class Showing:
         )
         measured = tuple(picture.measured_of(region) for region in regions)
         if self._new("regions", regions, measured, shown.selected, shown.coverage, picture.stale):
+            canvas.corners = _corners_of(regions, shown.selected)
             canvas.region_layer.show(
                 tuple(
                     self._marked(place, region, found)
@@ -97,7 +102,7 @@ class Showing:
             canvas.map_layer.show(None, field, self._theme)
             canvas.colour_bar.show_bar(None, self._theme)
             return
-        colours = themes.colour_table(self._theme, shown.kind)
+        colours = themes.table_for_range(self._theme, shown.kind, *levels)
         canvas.map_layer.show(map_image(shown.values, field.grid, colours, *levels), field, self._theme)
         factor, _ = self._picture.unit_view.of(shown.unit)
         label = self._picture.unit_view.label(f"{shown.title} {shown.symbol}", shown.unit)
@@ -141,7 +146,7 @@ class Showing:
         low, high = picture.shown.levels[tint.name]
         factor, unit = picture.unit_view.of(tint.unit)
         ends = " … ".join(wording.short(factor * end, signed=tint.kind == "signed") for end in (low, high))
-        table = themes.colour_table(self._theme, tint.kind)
+        table = themes.table_for_range(self._theme, tint.kind, low, high)
         return Tint(level_indices(tint.values, low, high), table), f"colour: {tint.symbol} {ends} {unit} · "
 
     def _label_axes(self, picture: Picture) -> None:
@@ -169,6 +174,18 @@ class Showing:
         )
 
 
+def _corners_of(regions, selected: str | None) -> np.ndarray:
+    """Corners and centres of the regions, but not of the one in hand: it must not stick to itself."""
+    found = [
+        handle.at
+        for region in regions
+        if region.name != selected
+        for handle in handles(region)
+        if handle.kind in ("corner", "centre")
+    ]
+    return np.array(found, complex)
+
+
 def marks_of(field) -> tuple[tuple[str, str], ...]:
     """The node marks that occur in a field, in the legend's order."""
     if field is None:
@@ -180,4 +197,4 @@ def marks_of(field) -> tuple[tuple[str, str], ...]:
 def _same(a, b) -> bool:
     if isinstance(a, tuple) and isinstance(b, tuple):
         return len(a) == len(b) and all(x is y or _same(x, y) for x, y in zip(a, b, strict=True))
-    return isinstance(a, int | float | str | bool | UnitView) and type(a) is type(b) and a == b
+    return isinstance(a, int | float | complex | str | bool | UnitView) and type(a) is type(b) and a == b

@@ -10,9 +10,10 @@ from PySide6.QtCore import QPointF, QRectF, Qt, Signal
 from PySide6.QtGui import QColor
 
 from fieldview.compute.field import Field
+from fieldview.compute.grid import Grid
 from fieldview.gui import theme as themes
 from fieldview.gui.canvas.furniture import ColourBar, Legend
-from fieldview.gui.canvas.layers import FlowLayer, LinesLayer, MapLayer, Sketch, SketchLayer
+from fieldview.gui.canvas.layers import FlowLayer, LinesLayer, MapLayer, Sketch, SketchLayer, StreamLayer
 from fieldview.gui.canvas.lens import Lens
 from fieldview.gui.canvas.map_image import outline
 from fieldview.gui.canvas.region_layer import RegionLayer
@@ -63,6 +64,8 @@ class Canvas(pg.GraphicsView):
         self._box_from: complex | None = None
         self._space_down = self._space_used = False
         self._extent: QRectF | None = None
+        self._grid: Grid | None = None
+        self.corners = np.zeros(0, complex)  # places of regions that are snapped to as well
         self._build()
 
     def _build(self):
@@ -84,9 +87,10 @@ class Canvas(pg.GraphicsView):
         self.colour_bar, self.legend = ColourBar(), Legend()
         self.plot.layout.addItem(self.colour_bar, 2, 3)
         self.plot.layout.addItem(self.legend, 4, 0, 1, 4)
-        layers = (MapLayer, LinesLayer, FlowLayer, RegionLayer, SketchLayer)
-        made = [layer(self.view_box, self.lens) for layer in layers]
-        self.map_layer, self.lines_layer, self.flow_layer, self.region_layer, self.sketch_layer = made
+        layers = (MapLayer, LinesLayer, FlowLayer, StreamLayer, RegionLayer, SketchLayer)
+        self._layers = [layer(self.view_box, self.lens) for layer in layers]
+        self.map_layer, self.lines_layer, self.flow_layer, *above = self._layers
+        self.stream_layer, self.region_layer, self.sketch_layer = above
         self.view_box.sigRangeChanged.connect(self._range_changed)
         self.view_box.sigResized.connect(self._range_changed)
 
@@ -117,7 +121,8 @@ class Canvas(pg.GraphicsView):
         self.plot.layout.activate()
 
     def set_extent(self, field: Field | None) -> None:
-        """What F fits: the field's grid with half a spacing around it."""
+        """What F fits: the field's grid with half a spacing around it; its nodes are snapped to."""
+        self._grid = field.grid if field is not None else None
         if field is None:
             self._extent = None
             return
@@ -157,13 +162,7 @@ class Canvas(pg.GraphicsView):
         self.view_box.translateBy(x=-pixels.x() / scale, y=pixels.y() / scale)
 
     def _range_changed(self, *_):
-        for layer in (
-            self.map_layer,
-            self.lines_layer,
-            self.flow_layer,
-            self.region_layer,
-            self.sketch_layer,
-        ):
+        for layer in self._layers:
             layer.prepareGeometryChange()
             layer.update()
         self.range_moved.emit()
@@ -193,15 +192,13 @@ class Canvas(pg.GraphicsView):
     # -- pointer and keys ----------------------------------------------------------------------------
 
     def pointer(self, event) -> Pointer:
-        position = event.position()
-        modifiers = event.modifiers()
-        return Pointer(
-            self.to_plane(position),
-            complex(position.x(), position.y()),
-            self.lens().scale,
-            bool(modifiers & Qt.KeyboardModifier.ShiftModifier),
-            bool(modifiers & Qt.KeyboardModifier.ControlModifier),
-        )
+        position, modifiers = event.position(), event.modifiers()
+        at, scale = self.to_plane(position), self.lens().scale
+        snaps = bool(modifiers & Qt.KeyboardModifier.ControlModifier)
+        if snaps and self._grid is not None:
+            at = snapped(at, self._grid, self.corners, NEAR / scale)
+        shift = bool(modifiers & Qt.KeyboardModifier.ShiftModifier)
+        return Pointer(at, complex(position.x(), position.y()), scale, shift, snaps)
 
     def mousePressEvent(self, event):
         event.accept()
@@ -302,6 +299,18 @@ class Canvas(pg.GraphicsView):
 
 def _corners(one: complex, other: complex) -> tuple[complex, ...]:
     return (one, complex(other.real, one.imag), other, complex(one.real, other.imag))
+
+
+def snapped(at: complex, grid: Grid, corners: np.ndarray, reach: float) -> complex:
+    """The corner of a region within reach of a place, else the node nearest to it."""
+    if corners.size:
+        nearest = corners[np.argmin(np.abs(corners - at))]
+        if abs(nearest - at) <= reach:
+            return complex(nearest)
+    local = complex(grid.placement.to_lattice(at))
+    x = grid.x[np.argmin(np.abs(grid.x - local.real))]
+    y = grid.y[np.argmin(np.abs(grid.y - local.imag))]
+    return complex(grid.placement.to_plane(complex(x, y)))
 
 
 def level_indices(values: np.ndarray, low: float, high: float) -> np.ndarray:

@@ -39,14 +39,21 @@ class Plot(pg.PlotWidget):
     def start(self, x_label: str, y_label: str, *, zero: bool = True) -> None:
         """An empty plot with these axes; ``zero`` draws the zero line and keeps it in sight."""
         self.clear()
+        self.show_axes(False)
         style = {"color": self.theme.muted, "font-size": f"{themes.SMALL_PIXELS}px"}
         self.setLabel("bottom", x_label, **style)
         self.setLabel("left", y_label, **style)
         if zero:
             self.addItem(pg.InfiniteLine(0, 0, pen=pg.mkPen(self.theme.hairline, width=1)))
 
+    def show_axes(self, on: bool) -> None:
+        """An empty plot needs no axes with made-up numbers."""
+        for name in ("left", "bottom"):
+            self.getPlotItem().showAxis(name, on)
+
     def add_line(self, x, y, colour: str, *, spread=None, dash: tuple[float, ...] = (), width=1.6) -> None:
         """A curve, with a band of ± ``spread`` where that is known."""
+        self.show_axes(True)
         x, y = np.asarray(x, float), np.asarray(y, float)
         colour = themes.legible(colour, self.theme)
         if spread is not None and np.isfinite(spread).any():
@@ -72,4 +79,4 @@ class Plot(pg.PlotWidget):
             labelOpts={"position": 0.5, "color": self.theme.muted, "anchors": [(0, 0.5), (0, 0.5)]},
         )
         line.label.setFont(themes.font(pixels=themes.SMALL_PIXELS))
-        self.addItem(line)
+        self.addItem(line, ignoreBounds=True)

@@ -4,12 +4,12 @@ from __future__ import annotations
 
 from PySide6.QtCore import QModelIndex, QSize, Qt
 from PySide6.QtGui import QColor, QIcon, QPainter, QPen, QPixmap
-from PySide6.QtWidgets import QComboBox, QTableView
+from PySide6.QtWidgets import QComboBox, QHeaderView, QTableView
 
 from fieldview.gui import theme as themes
 from fieldview.gui.panels.base import Panel, label
 from fieldview.gui.panels.region_table import table
-from fieldview.gui.panels.tables import CellModel, dense
+from fieldview.gui.panels.tables import CellModel, dense, fit_columns
 from fieldview.gui.picture import Picture
 
 
@@ -48,7 +48,7 @@ class Regions(Panel):
     def __init__(self, desk, parent=None):
         super().__init__(desk, "regions", "Regions", parent)
         self.setProperty("role", "paper")
-        self._coverage = _coverage_choice(desk)
+        self._coverage = coverage_choice(desk)
         self._said = label("", "muted")
         self.heading_row.addWidget(self._said)
         self.heading_row.addStretch()
@@ -57,11 +57,13 @@ class Regions(Panel):
         self.model = RegionModel(desk, self)
         self.view = dense(QTableView())
         self.view.setProperty("role", "paper")
+        self.view.horizontalHeader().setSectionResizeMode(QHeaderView.ResizeMode.Interactive)
         self.view.setObjectName("regions_table")
         self.view.setAccessibleName("Regions and their numbers")
         self.view.setModel(self.model)
         self.view.setIconSize(QSize(16, 12))
         self.view.selectionModel().currentRowChanged.connect(self._chosen)
+        self.view.activated.connect(self._opened)
         self.column.addWidget(self.view)
         self._empty = label(
             "No region yet. Choose a tool (G polygon, R rectangle, C circle) and draw on the canvas.", "muted"
@@ -76,6 +78,7 @@ class Regions(Panel):
         if len(seen) != len(self._seen) or any(a is not b for a, b in zip(seen, self._seen, strict=True)):
             self._seen = seen
             self.model.put(*table(picture))
+            fit_columns(self.view, first=24)
         self.view.setVisible(bool(picture.regions))
         self._empty.setVisible(not picture.regions)
         k = picture.shown.coverage
@@ -96,13 +99,19 @@ class Regions(Panel):
         elif self.view.currentIndex().isValid():
             self.view.setCurrentIndex(QModelIndex())
 
+    def _opened(self, index: QModelIndex) -> None:
+        """A row opens to its uncertainty budget."""
+        if index.column() > 0:
+            self.desk.show(drawer="budget")
+
     def _chosen(self, current: QModelIndex, _before) -> None:
         regions = self.desk.picture.regions
         if current.isValid() and current.row() < len(regions):
             self.desk.show(selected=regions[current.row()].name)
 
 
-def _coverage_choice(desk) -> QComboBox:
+def coverage_choice(desk) -> QComboBox:
+    """A box with the factors k that uncertainties are shown with."""
     choice = QComboBox()
     choice.setAccessibleName("Coverage factor")
     choice.setToolTip("Factor by which the uncertainties are multiplied for showing")

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from fieldview.gui.tools.base import Tool
 from fieldview.gui.tools.drawing import CircleTool, Corners, EllipseTool, Freehand, LineTool, RectangleTool
 from fieldview.gui.tools.editing import Keep, MaskTool, Reject
-from fieldview.gui.tools.move import Move, Probe
+from fieldview.gui.tools.move import Move, Probe, Seed
 
 __all__ = ["TOOLS", "Listed"]
 
@@ -34,4 +34,5 @@ TOOLS = (
     Listed("reject", "Reject", "X", Reject),
     Listed("keep", "Keep", "K", Keep),
     Listed("mask", "Mask", "M", MaskTool),
+    Listed("seed", "Seed", "S", Seed),
 )

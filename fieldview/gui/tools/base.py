@@ -12,6 +12,10 @@ CLICK_PIXELS = 3.0
 """A press that moves less than this is a click."""
 
 
+HANDLE_KINDS = ("corner", "rim", "side", "centre", "insert")
+"""In the order in which they are taken where they lie close together."""
+
+
 class Tool:
     """A tool in use. Pointer events come in plane coordinates; what it draws meanwhile is its ``sketch``."""
 
@@ -75,10 +79,10 @@ class Grip:
     def holding(self) -> bool:
         return self._region is not None
 
-    def take_handle(self, pointer: Pointer) -> bool:
-        """Take the selected region's handle under the pointer, if there is one."""
+    def take_handle(self, pointer: Pointer, *, kinds: tuple[str, ...] = HANDLE_KINDS) -> bool:
+        """Take the selected region's handle under the pointer, if there is one of these kinds."""
         handle = handle_under(self._desk.picture.selected, pointer)
-        if handle is None:
+        if handle is None or handle.kind not in kinds:
             return False
         self._start(self._desk.picture.selected, handle, pointer)
         return True
@@ -123,8 +127,7 @@ def handle_under(region, pointer: Pointer) -> shaping.Handle | None:
     if region is None:
         return None
     near = [h for h in shaping.handles(region) if abs(h.at - pointer.at) <= pointer.reach]
-    order = ("corner", "rim", "side", "centre", "insert")
-    return min(near, key=lambda h: (order.index(h.kind), abs(h.at - pointer.at)), default=None)
+    return min(near, key=lambda h: (HANDLE_KINDS.index(h.kind), abs(h.at - pointer.at)), default=None)
 
 
 def region_under(regions, pointer: Pointer):

@@ -31,7 +31,8 @@ class Drawing(Tool):
         return Sketch(tuple(points), closed=self.shape != "line") if self._points else None
 
     def press(self, pointer):
-        if not self._points and self._grip.take_handle(pointer):
+        # centres are left alone: a contour around the same centre begins there
+        if not self._points and self._grip.take_handle(pointer, kinds=("corner", "rim", "side", "insert")):
             return
         self._pressed(pointer)
 
@@ -88,7 +89,7 @@ class Drawing(Tool):
 class Corners(Drawing):
     """Corner by corner: click, click, … Return or a double click closes, Backspace takes one back."""
 
-    hint = "Click corners; Return or a double click closes. Backspace takes one back, Shift keeps straight."
+    hint = "Click corners; Return closes, Backspace takes one back. Shift: straight, Ctrl: on nodes."
     least = 3
 
     def _pressed(self, pointer):
@@ -149,7 +150,7 @@ class Corners(Drawing):
 
 
 class LineTool(Corners):
-    hint = "Click points in the direction of travel; Return or a double click ends the line."
+    hint = "Click points in the direction of travel; Return ends the line. Shift: straight, Ctrl: on nodes."
     shape = "line"
     least = 2
 

@@ -1,4 +1,4 @@
-"""Move: choose regions, drag them and their handles. Probe: hold a place for the readout."""
+"""Move: regions and their handles. Probe: a place held for the readout. Seed: streamlines."""
 
 from __future__ import annotations
 
@@ -10,7 +10,7 @@ from fieldview.gui.tools.base import Grip, Tool, handle_under, region_under
 
 
 class Move(Tool):
-    hint = "Click a region to choose it; drag its handles or its inside. Shift keeps it straight."
+    hint = "Click a region to choose it; drag its handles or its inside. Shift: straight, Ctrl: on nodes."
     shape_cursor = Qt.CursorShape.ArrowCursor
 
     def __init__(self, desk):
@@ -92,3 +92,31 @@ class Probe(Tool):
 
     def cancel(self):
         self._held = None
+
+
+class Seed(Tool):
+    """Plants seeds of streamlines; they belong to the view, not to the session's numbers."""
+
+    hint = "Click to draw the streamline through a place; click a seed, or press Backspace, to take it away."
+
+    def press(self, pointer):
+        seeds = self.desk.picture.shown.seeds
+        near = [seed for seed in seeds if abs(seed - pointer.at) <= pointer.reach]
+        if near:
+            self.desk.show(seeds=tuple(seed for seed in seeds if seed not in near))
+        elif self.desk.is_over_field(pointer.at):
+            self.desk.show(seeds=(*seeds, complex(pointer.at)))
+
+    def drag(self, pointer):
+        self.desk.point_at(pointer.at)
+
+    def double(self, pointer):
+        self.press(pointer)
+        return True
+
+    def key(self, key, modifiers):
+        seeds = self.desk.picture.shown.seeds
+        if key == Qt.Key.Key_Backspace and seeds:
+            self.desk.show(seeds=seeds[:-1])
+            return True
+        return super().key(key, modifiers)
