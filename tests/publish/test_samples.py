@@ -80,7 +80,7 @@ def test_the_street_pushes_and_moves_as_it_says():
     # speed of a staggered street in its own flow (von Kármán)
     assert fin_wake.STREAM + own == pytest.approx(fin_wake.CONVECTION, abs=1e-3)
     assert fin_wake.SPACING == pytest.approx(0.115, abs=6e-4)
-    assert pytest.approx(0.30) == fin_wake.FREQUENCY * fin_wake.HEAVE / fin_wake.STREAM
+    assert fin_wake.FREQUENCY * fin_wake.HEAVE / fin_wake.STREAM == pytest.approx(0.30)
 
 
 def test_the_noise_of_the_wake_is_the_stated_sigma():
