@@ -30,4 +30,4 @@ export QT_QPA_PLATFORM=offscreen
 .venv/bin/ruff check .
 .venv/bin/ruff format --check .
 .venv/bin/lint-imports
-.venv/bin/python -m pytest -q "$@"
+.venv/bin/python -m pytest -q -n 2 --dist loadfile "$@"
