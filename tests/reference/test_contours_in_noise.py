@@ -125,9 +125,7 @@ def twin_ratios(count: int, seed: int) -> tuple[np.ndarray, np.ndarray]:
         u, v = seen_through(window, x, y, core=core, centre=centre) + bell_correlated(rng, x.shape, sigma)
         missing = rng.random(x.shape) < 0.01
         for angle in rng.uniform(0, 2 * np.pi, 2):  # two gaps of two by two nodes on the contour
-            ix, iy = (
-                round(c + radius * f(angle)) for c, f in zip(centre, (np.cos, np.sin), strict=True)
-            )
+            ix, iy = (round(c + radius * f(angle)) for c, f in zip(centre, (np.cos, np.sin), strict=True))
             missing[iy : iy + 2, ix : ix + 2] = True
         u, v = spoiled(rng, u, v, outliers=0.02, missing=missing, reach=1.5 * peak)
         error = ErrorModel(
