@@ -8,6 +8,9 @@ from PySide6.QtWidgets import QApplication, QMainWindow
 
 from fieldview.gui.window import MainWindow
 
+TURN = 0.001
+"""[s]"""
+
 _application: QApplication | None = None
 
 
@@ -27,6 +30,8 @@ def application() -> QApplication:
     """The running application, made on first use and kept."""
     global _application
     running = QApplication.instance()
+    # background work holds the interpreter for at most so long before the window gets its turn
+    sys.setswitchinterval(TURN)
     if running is None:
         running = _application = QApplication(sys.argv[:1])
         running.setApplicationName("Loopflux")

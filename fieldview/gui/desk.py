@@ -234,7 +234,7 @@ class Desk(QObject):
     @property
     def idle(self) -> bool:
         """Whether nothing is being worked on and everything that came is drawn."""
-        return self.jobs.idle and not self._soon.isActive()
+        return self.jobs.idle and self._pursuit.idle and not self._soon.isActive()
 
     def dismiss(self) -> None:
         self.opening = None if not self.jobs.is_pending("open") else self.opening

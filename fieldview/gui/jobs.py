@@ -12,15 +12,18 @@ import itertools
 import threading
 import time
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from types import GeneratorType
 from typing import Any
 
-from PySide6.QtCore import QObject, Qt, Signal
+from PySide6.QtCore import QObject, Qt, QTimer, Signal
 
 from fieldview.compute.errors import InputError
 
 SOON, LATER = 0, 1
+
+SLOW_MS = 150
+"""Work that is done sooner leaves no trace on the screen: what is shown does not flicker."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -66,12 +69,13 @@ class Answer:
 
 @dataclass(frozen=True)
 class Task:
-    """A pending request as the status line shows it."""
+    """A pending request as the status line shows it; ``slow`` once it takes longer than the eye forgives."""
 
     kind: str
     title: str
     since: float
     share: float | None = None
+    slow: bool = False
 
 
 class Jobs(QObject):
@@ -87,6 +91,10 @@ class Jobs(QObject):
         self._pending: dict[str, tuple[Request, Task]] = {}
         self._lanes: dict[str, _Lane] = {}
         self._closed = False
+        self._slow = QTimer(self)
+        self._slow.setSingleShot(True)
+        self._slow.setInterval(SLOW_MS)
+        self._slow.timeout.connect(self._mark_slow)
         self._arrived.connect(self._deliver, Qt.ConnectionType.QueuedConnection)
 
     def submit(
@@ -108,6 +116,8 @@ class Jobs(QObject):
         if lane not in self._lanes:
             self._lanes[lane] = _Lane(lane, self._arrived.emit)
         self._lanes[lane].put(request)
+        if not self._slow.isActive():
+            self._slow.start()
         self.changed.emit()
         return request.id
 
@@ -125,6 +135,7 @@ class Jobs(QObject):
     def close(self) -> None:
         """Cancel everything and wait for the threads to end."""
         self._closed = True
+        self._slow.stop()
         for kind in list(self._pending):
             self._drop(kind)
         for lane in self._lanes.values():
@@ -141,6 +152,17 @@ class Jobs(QObject):
     def is_pending(self, kind: str) -> bool:
         return kind in self._pending
 
+    def _mark_slow(self) -> None:
+        now = time.monotonic()
+        late = [k for k, (_, t) in self._pending.items() if not t.slow and now - t.since >= 1e-3 * SLOW_MS]
+        for kind in late:
+            request, task = self._pending[kind]
+            self._pending[kind] = (request, replace(task, slow=True))
+        if any(not task.slow for _, task in self._pending.values()):
+            self._slow.start()
+        if late:
+            self.changed.emit()
+
     def _drop(self, kind: str) -> bool:
         request, _ = self._pending.pop(kind, (None, None))
         if request is not None:
@@ -152,10 +174,7 @@ class Jobs(QObject):
         if request is None or request.id != answer.request:
             return
         if isinstance(answer.value, Progress):
-            self._pending[answer.kind] = (
-                request,
-                Task(task.kind, task.title, task.since, answer.value.share),
-            )
+            self._pending[answer.kind] = (request, replace(task, share=answer.value.share))
             self.changed.emit()
             return
         if answer.last:

@@ -262,8 +262,8 @@ class Picture:
 
     @property
     def stale(self) -> bool:
-        """Whether the numbers shown are of an earlier state: the field of this one is still on its way."""
-        return any(task.kind in ("open", "field") for task in self.tasks)
+        """Whether the numbers shown are of an earlier state: the field of this one is late."""
+        return any(task.slow and task.kind in ("open", "field") for task in self.tasks)
 
     @property
     def tint_now(self) -> MapOf | None:

@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 import numpy as np
+from PySide6.QtCore import QTimer
 
 from fieldview.gui import work
 from fieldview.gui.canvas.arrows import typical_speed
 from fieldview.gui.jobs import LATER, Answer
 from fieldview.gui.picture import Card, MapOf, Measured, Picture, field_parts
 from fieldview.publish import wording
+
+REST_MS = 30
 
 
 class Pursuit:
@@ -22,6 +25,11 @@ class Pursuit:
         self._keys: dict[str, object] = {}
         self._share_parts: tuple | None = None
         self._run_key: tuple | None = None
+        # what can wait gives way to the painting of what cannot
+        self._rest = QTimer(desk)
+        self._rest.setSingleShot(True)
+        self._rest.setInterval(REST_MS)
+        self._rest.timeout.connect(self._pursue_rest)
         self._whole_run: tuple = (None, None)
 
     def forget(self) -> None:
@@ -29,17 +37,28 @@ class Pursuit:
         self._whole_run = (None, None)
 
     def pursue(self) -> None:
+        """Ask for what the canvas needs at once, and soon for the rest."""
         picture = self._desk.picture
         if picture.run is None or self._desk.bench is None:
             return
         self._field(picture)
         if picture.field is not None:
-            self._numbers(picture)
             self._map(picture)
-            self._iso(picture)
-            self._streams(picture)
-            self._curve(picture)
-            self._cards(picture)
+            self._rest.start()
+
+    @property
+    def idle(self) -> bool:
+        return not self._rest.isActive()
+
+    def _pursue_rest(self) -> None:
+        picture = self._desk.picture
+        if picture.run is None or self._desk.bench is None or picture.field is None:
+            return
+        self._numbers(picture)
+        self._iso(picture)
+        self._streams(picture)
+        self._curve(picture)
+        self._cards(picture)
 
     def _changed(self, kind: str, key: object) -> bool:
         if self._keys.get(kind) == key:
@@ -134,7 +153,7 @@ class Pursuit:
         first = [shown.quantity] if shown.quantity in names else []
         order = (*first, *(n for n in names if n not in first))
         self._desk.jobs.submit(
-            "cards", work.deal_cards, field, order, lane="derive", urgency=LATER, title="Quantities"
+            "cards", work.deal_cards, field, order, lane="cards", urgency=LATER, title="Quantities"
         )
 
     # -- what came -----------------------------------------------------------------------------------

@@ -148,23 +148,24 @@ class FlowLayer(Layer):
 
     def __init__(self, view_box, lens_now):
         super().__init__(view_box, lens_now, -10)
-        self._flow: Flow | None = None
+        self.flow: Flow | None = None
+        self.painted: Flow | None = None
         self._sheet: QPixmap | None = None
         self._drawn_for: Lens | None = None
         self._arrows, self._marks = ArrowPainter(), MarkPainter()
 
     def show(self, flow: Flow | None) -> None:
-        self._flow, self._sheet = flow, None
+        self.flow, self._sheet = flow, None
         self.update()
 
     def paint(self, painter, option, widget=None):
-        if self._flow is None:
+        if self.flow is None:
             return
         lens = self.lens_now()
         ratio = painter.device().devicePixelRatioF()
         if not self._still_good(lens, ratio):
             self._draw_sheet(lens, ratio)
-        before = self._drawn_for
+        before, self.painted = self._drawn_for, self.flow
         painter.drawPixmap(
             QPointF(
                 lens.left - before.left - self.MARGIN * lens.width,
@@ -188,7 +189,7 @@ class FlowLayer(Layer):
         sheet = QPixmap(max(1, round(over * lens.width * ratio)), max(1, round(over * lens.height * ratio)))
         sheet.setDevicePixelRatio(ratio)
         sheet.fill(Qt.GlobalColor.transparent)
-        flow = self._flow
+        flow = self.flow
         with QPainter(sheet) as painter:
             painter.setRenderHint(QPainter.RenderHint.Antialiasing)
             painter.translate(self.MARGIN * lens.width, self.MARGIN * lens.height)
