@@ -41,6 +41,15 @@ Frames = Annotated[
     ),
 ]
 
+Out = Annotated[
+    Path | None, typer.Option("--out", help="Write to this file instead of stdout", metavar="FILE")
+]
+Workers = Annotated[int, typer.Option("--workers", help="Processes that share the frames", metavar="N")]
+Cluster = Annotated[
+    str | None,
+    typer.Option("--cluster", help="Scheduler of a dask cluster that shares the frames", metavar="ADDRESS"),
+]
+
 
 def main(arguments: list[str] | None = None) -> None:
     """Run the command and leave with its exit status."""
@@ -127,16 +136,19 @@ def measure(
     session: SessionFile,
     frames: Frames = None,
     format: Annotated[str, typer.Option("--format", help="table, csv or json")] = "table",
-    out: Annotated[Path | None, typer.Option("--out", help="Write to this file instead of stdout")] = None,
+    out: Out = None,
+    workers: Workers = 1,
+    cluster: Cluster = None,
 ) -> int:
     """Measure every region on every frame, with uncertainties."""
+    from fieldview.publish import sharing
     from fieldview.publish.measuring import FORMATS, measurement
 
     if format not in FORMATS:
         raise InputError(f"--format {format} is not known; use {', '.join(FORMATS)}")
-    if out is not None and not out.absolute().parent.is_dir():
-        raise InputError(f"{out}: its folder does not exist; make it first")
-    done = measurement(session, frames, format, progress=_progress, say=_say)
+    _check_place(out)
+    with sharing.workers(workers, cluster) as executor:
+        done = measurement(session, frames, format, progress=_progress, say=_say, executor=executor)
     with done.text as text:
         if out is None:
             for block in iter(lambda: text.read(1 << 20), ""):
@@ -145,6 +157,70 @@ def measure(
         else:
             _write(out, text.read())
     return WITH_REMARKS if done.remarks else DONE
+
+
+@app.command()
+def check(
+    session: SessionFile,
+    frames: Frames = None,
+    format: Annotated[str, typer.Option("--format", help="table, csv (one line a frame) or json")] = "table",
+    out: Out = None,
+) -> int:
+    """Say whether the run is good: shares, outliers, noise, jumps, stuck frames, drift."""
+    from fieldview.publish.run_reports import FORMATS, check_report
+
+    if format not in FORMATS:
+        raise InputError(f"--format {format} is not known; use {', '.join(FORMATS)}")
+    _check_place(out)
+    text, remarks = check_report(session, frames, format, progress=_progress, say=_say)
+    _print(text, out)
+    return WITH_REMARKS if remarks else DONE
+
+
+@app.command()
+def stats(
+    session: SessionFile,
+    frames: Frames = None,
+    format: Annotated[str, typer.Option("--format", help="table, csv or json")] = "table",
+    out: Out = None,
+    at: Annotated[
+        list[str] | None,
+        typer.Option("--at", help="Show the values at the node nearest to x,y too", metavar="X,Y"),
+    ] = None,
+    maps: Annotated[
+        Path | None,
+        typer.Option("--maps", help="Write every map to this .csv, .nc or .npz file", metavar="FILE"),
+    ] = None,
+    filled: Annotated[bool, typer.Option("--filled", help="Count filled vectors as samples")] = False,
+    subtract_noise: Annotated[
+        bool, typer.Option("--subtract-noise", help="Take the noise's variance off the stresses")
+    ] = False,
+    workers: Workers = 1,
+    cluster: Cluster = None,
+) -> int:
+    """Statistics over the frames: mean, deviation, stresses, skewness, kurtosis, with uncertainties."""
+    from fieldview.publish import sharing
+    from fieldview.publish.run_reports import FORMATS, statistics_report
+
+    if format not in FORMATS:
+        raise InputError(f"--format {format} is not known; use {', '.join(FORMATS)}")
+    _check_place(out)
+    _check_place(maps)
+    with sharing.workers(workers, cluster) as executor:
+        text, remarks = statistics_report(
+            session,
+            frames,
+            format,
+            filled=filled,
+            subtract_noise=subtract_noise,
+            points=[_point(text) for text in at or ()],
+            maps=maps,
+            progress=_progress,
+            say=_say,
+            executor=executor,
+        )
+    _print(text, out)
+    return WITH_REMARKS if remarks else DONE
 
 
 @app.command()
@@ -157,14 +233,25 @@ def apply(
         str | None,
         typer.Option("--quantities", help="Derived quantities to write too, such as vorticity,speed"),
     ] = None,
+    workers: Workers = 1,
+    cluster: Cluster = None,
 ) -> int:
     """Write the cleaned field of every frame, the region table and a record of what was done."""
+    from fieldview.publish import sharing
     from fieldview.publish.applying import apply_session
 
     names = [name.strip() for name in (quantities or "").split(",") if name.strip()]
-    remarks = apply_session(
-        session, out, frames=frames, to=to, quantities=names, progress=_progress, say=_say
-    )
+    with sharing.workers(workers, cluster) as executor:
+        remarks = apply_session(
+            session,
+            out,
+            frames=frames,
+            to=to,
+            quantities=names,
+            progress=_progress,
+            say=_say,
+            executor=executor,
+        )
     return WITH_REMARKS if remarks else DONE
 
 
@@ -199,6 +286,28 @@ def schema() -> int:
 
     print(json.dumps(session_schema(), indent=1))
     return DONE
+
+
+def _check_place(path: Path | None) -> None:
+    if path is not None and not path.absolute().parent.is_dir():
+        raise InputError(f"{path}: its folder does not exist; make it first")
+
+
+def _point(text: str) -> tuple[float, float]:
+    try:
+        x, y = (float(part) for part in text.split(","))
+    except ValueError:
+        raise InputError(
+            f"--at {text}: write a point as x,y in the session's units, such as 0.1,0.02"
+        ) from None
+    return x, y
+
+
+def _print(text: str, out: Path | None) -> None:
+    if out is None:
+        sys.stdout.write(text)
+    else:
+        _write(out, text)
 
 
 def _has_display() -> bool:

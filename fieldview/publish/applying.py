@@ -11,6 +11,7 @@ import json
 import shutil
 from collections import Counter
 from collections.abc import Sequence
+from concurrent.futures import Executor
 from dataclasses import dataclass
 from functools import cached_property
 from pathlib import Path
@@ -22,6 +23,7 @@ from fieldview.compute.quantities import QUANTITIES, quantity_map
 from fieldview.files import UnreadableFrame
 from fieldview.files.writing import write_whole
 from fieldview.publish.measuring import Progress
+from fieldview.publish.sharing import Share, bench_of, in_order
 from fieldview.publish.tables import csv_lines
 from fieldview.session.measure import chosen_frames, frame_row, unanswered
 from fieldview.session.replay import MEAN, Frame, Workbench
@@ -40,6 +42,7 @@ def apply_session(
     quantities: Sequence[str] = (),
     progress: Progress,
     say,
+    executor: Executor | None = None,
 ) -> bool:
     """Write the cleaned fields of a session's frames into a folder; True where there was anything to remark.
 
@@ -69,9 +72,10 @@ def apply_session(
             say(sentence)
         return bool(remarks or finished)
     work.claim_folder()
-    for frame in progress(work.frames, "applying", len(work.frames)):
-        if not work.is_done(frame):
-            work.do(frame)
+    waiting = [frame for frame in work.frames if not work.is_done(frame)]
+    jobs = [(Share.of(bench.session), work.order, (frame,)) for frame in waiting]
+    for _ in progress(in_order(_do, jobs, executor), "applying", len(waiting)):
+        pass
     parts = [work.part(frame) for frame in work.frames]
     for part in parts:
         for sentence in part["remarks"]:
@@ -81,6 +85,14 @@ def apply_session(
         raise InputError(parts[0]["remarks"][0])
     work.finish(parts)
     return bool(remarks) or any(part["remarks"] for part in parts)
+
+
+def _do(job) -> None:
+    """The part of the work that one job is, in this or another process."""
+    share, order, frames = job
+    work = _Work(bench=bench_of(share), **order)
+    for frame in frames:
+        work.do(frame)
 
 
 @dataclass(frozen=True, eq=False)
@@ -93,6 +105,17 @@ class _Work:
     frames: tuple[Frame, ...]
     to: str
     quantities: tuple[str, ...]
+
+    @property
+    def order(self) -> dict:
+        """Everything but the workbench, to be sent to workers."""
+        return {
+            "path": self.path,
+            "folder": self.folder.absolute(),
+            "frames": self.frames,
+            "to": self.to,
+            "quantities": self.quantities,
+        }
 
     @property
     def name(self) -> str:

@@ -5,11 +5,13 @@ from __future__ import annotations
 import json
 import tempfile
 from collections.abc import Callable, Iterable, Iterator
+from concurrent.futures import Executor
 from dataclasses import dataclass
 from pathlib import Path
 from typing import IO
 
 from fieldview.compute.errors import InputError
+from fieldview.publish.sharing import Share, bench_of, in_order, portions
 from fieldview.publish.tables import csv_lines, text_lines
 from fieldview.session.measure import chosen_frames, measure_frames, unanswered
 from fieldview.session.replay import Workbench
@@ -27,7 +29,15 @@ class Measurement:
     remarks: bool
 
 
-def measurement(path: Path, frames: str | None, format: str, *, progress: Progress, say) -> Measurement:
+def measurement(
+    path: Path,
+    frames: str | None,
+    format: str,
+    *,
+    progress: Progress,
+    say,
+    executor: Executor | None = None,
+) -> Measurement:
     """Measure a session file; ``say`` is told every changed source, skipped frame and unanswered region.
 
     The text is written to a scratch file as it comes, so that memory does not grow with the frames and
@@ -48,11 +58,8 @@ def measurement(path: Path, frames: str | None, format: str, *, progress: Progre
 
     for sentence in bench.changed_sources():
         remark(sentence)
-    rows = measure_frames(
-        bench,
-        progress(chosen, "measuring", len(chosen)),
-        on_skip=lambda frame, error: remark(f"frame {frame} was skipped: {error}"),
-    )
+    rows = _rows(bench, chosen, remark, executor)
+    rows = progress(rows, "measuring", len(chosen))
     text = tempfile.TemporaryFile("w+", encoding="utf-8", newline="")  # noqa: SIM115 - handed on
     try:
         for line in FORMATS[format](path.name, _watched(rows, remark)):
@@ -62,6 +69,37 @@ def measurement(path: Path, frames: str | None, format: str, *, progress: Progre
         raise
     text.seek(0)
     return Measurement(text, bool(said))
+
+
+def _rows(bench: Workbench, frames: list, remark, executor: Executor | None) -> Iterator[dict]:
+    """Rows of the frames in their order, whoever makes them."""
+    share = Share.of(bench.session)
+    jobs = [(share, part) for part in portions(frames)]
+    done, last_error = 0, None
+    for results in in_order(_measured, jobs, executor):
+        for frame, row, error in results:
+            if row is None:
+                remark(f"frame {frame} was skipped: {error}")
+                last_error = error
+                continue
+            done += 1
+            yield row
+    if last_error is not None and not done:
+        raise InputError(last_error)
+
+
+def _measured(job) -> list[tuple]:
+    """(frame, row, None), or (frame, None, why it was skipped), of the frames of one job."""
+    share, frames = job
+    skipped: dict = {}
+    rows = measure_frames(
+        bench_of(share),
+        frames,
+        on_skip=lambda frame, error: skipped.update({frame: str(error)}),
+        raise_if_none=False,
+    )
+    found = {row["frame"]: row for row in rows}
+    return [(frame, found.get(frame), skipped.get(frame)) for frame in frames]
 
 
 def _watched(rows: Iterable[dict], remark: Callable[[str], None]) -> Iterator[dict]:

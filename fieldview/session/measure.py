@@ -68,8 +68,12 @@ def measure_frames(
     frames: Iterable[Frame],
     *,
     on_skip: Callable[[Frame, InputError], None] | None = None,
+    raise_if_none: bool = True,
 ) -> Iterator[dict]:
-    """Rows of `measure`, one frame at a time, so that memory does not grow with their number."""
+    """Rows of `measure`, one frame at a time, so that memory does not grow with their number.
+
+    Where every frame was skipped the last error is raised, unless others go on with the rest of the run.
+    """
     done, last_error = 0, None
     for frame in frames:
         try:
@@ -82,7 +86,7 @@ def measure_frames(
             continue
         done += 1
         yield row
-    if last_error is not None and not done:
+    if last_error is not None and not done and raise_if_none:
         raise last_error
 
 

@@ -1,0 +1,174 @@
+"""The outputs of ``loopflux check`` and ``loopflux stats``: the run check and the statistics of a run."""
+
+from __future__ import annotations
+
+import csv
+import io
+import json
+import textwrap
+from collections.abc import Iterable, Iterator
+from concurrent.futures import Executor
+from pathlib import Path
+
+from fieldview.compute.errors import InputError
+from fieldview.compute.lag_window import LAGS
+from fieldview.publish import wording
+from fieldview.publish.measuring import Progress
+from fieldview.publish.sharing import Share, bench_of, in_order
+from fieldview.session.check import run_check
+from fieldview.session.replay import Workbench
+from fieldview.session.statistics import RunStatistics, frame_numbers, stretch_statistics, stretches
+from fieldview.session.store import load_session
+
+FORMATS = ("table", "csv", "json")
+
+
+def check_report(path: Path, frames: str | None, format: str, *, progress: Progress, say) -> tuple[str, bool]:
+    """The run check of a session as text, and whether there was anything to remark about the sources."""
+    bench = Workbench(load_session(path))
+    remarks = _changed(bench, say)
+    numbers = frame_numbers(bench, frames)
+    ticks = iter(progress(numbers, "checking", len(numbers)))
+    next(ticks, None)
+
+    def skip(frame, error):
+        remarks.append(f"frame {frame} was skipped: {error}")
+        say(remarks[-1])
+
+    found = run_check(bench, numbers, on_skip=skip, on_frame=lambda _: next(ticks, None))
+    if format == "json":
+        told = {"session": path.name, "findings": found.rows(), "frames": found.frame_rows()}
+        return json.dumps(told, indent=1, ensure_ascii=False, allow_nan=False) + "\n", bool(remarks)
+    if format == "csv":
+        return _csv(_flat(row) for row in found.frame_rows()), bool(remarks)
+    return "\n".join(_findings(found.rows())) + "\n", bool(remarks)
+
+
+def _findings(rows: list[dict]) -> Iterator[str]:
+    for row in rows:
+        yield f"{row['item']} ({row['concern']})"
+        yield from textwrap.wrap(row["verdict"], 98, initial_indent="  ", subsequent_indent="  ")
+        yield ""
+
+
+def statistics_report(
+    path: Path,
+    frames: str | None,
+    format: str,
+    *,
+    filled: bool,
+    subtract_noise: bool,
+    points: Iterable[tuple[float, float]],
+    maps: Path | None,
+    progress: Progress,
+    say,
+    executor: Executor | None = None,
+) -> tuple[str, bool]:
+    """The statistics of a session's run as text, and whether there was anything to remark.
+
+    With ``maps`` the mean field is written to that file too, every statistic and its uncertainty beside it.
+    """
+    bench = Workbench(load_session(path))
+    remarks = _changed(bench, say)
+    numbers = frame_numbers(bench, frames)
+    run = RunStatistics(filled=filled)
+    jobs = [(Share.of(bench.session), tuple(part), filled) for part in stretches(numbers)]
+    for part, skipped in progress(in_order(_stretch, jobs, executor), "statistics", len(jobs)):
+        run.merge(part)
+        for sentence in skipped:
+            remarks.append(sentence)
+            say(sentence)
+    if not run.frames:
+        raise InputError(remarks[-1] if remarks else f"{path}: the run has no frames")
+    rows = run.rows(subtract_noise=subtract_noise, points=points)
+    if maps is not None:
+        _write_maps(maps, run, path, subtract_noise)
+    if format == "json":
+        told = {"session": path.name, "frames": run.frames, "statistics": rows, "remarks": run.remarks()}
+        return json.dumps(told, indent=1, ensure_ascii=False, allow_nan=False) + "\n", bool(remarks)
+    if format == "csv":
+        return _csv(_flat(row) for row in rows), bool(remarks)
+    return "\n".join(_statistics(rows, run)) + "\n", bool(remarks)
+
+
+def _stretch(job) -> tuple[RunStatistics, list[str]]:
+    share, numbers, filled = job
+    skipped: list[str] = []
+    part = stretch_statistics(
+        bench_of(share),
+        numbers,
+        filled=filled,
+        lags=LAGS,
+        on_skip=lambda frame, error: skipped.append(f"frame {frame} was skipped: {error}"),
+    )
+    return part, skipped
+
+
+def _statistics(rows: list[dict], run: RunStatistics) -> Iterator[str]:
+    yield f"{run.frames} frames; medians over the nodes, with the median of their standard uncertainties"
+    yield ""
+    for row in rows:
+        shown = _number(row["median"], row["median_uncertainty"], row["unit"])
+        span = f"{wording.short(row['lowest'])} … {wording.short(row['highest'])}"
+        yield f"  {row['name']:<22} {shown:<34} {span}"
+        for point in row.get("points", ()):
+            at = "at ({}, {})".format(*(wording.short(place) for place in point["place"]))
+            yield f"  {at:>22} {_number(point['value'], point['uncertainty'], row['unit'])}"
+    yield ""
+    yield from (f"  ! {sentence}" for sentence in run.remarks())
+
+
+def _number(value: float | None, spread: float | None, unit: str) -> str:
+    """A value with its uncertainty, where that has a meaning; a count is a whole number."""
+    if spread is not None:
+        return wording.plus_minus(value, spread, unit)
+    if value is not None and unit == "1" and float(value).is_integer():
+        return f"{value:.0f}"
+    return f"{wording.short(value, digits=4)} {wording.unit_text(unit)}".rstrip()
+
+
+def _write_maps(path: Path, run: RunStatistics, session: Path, subtract_noise: bool) -> None:
+    from fieldview.files import delimited, netcdf, npz
+
+    writers = {".csv": delimited.write_csv, ".nc": netcdf.write_netcdf, ".npz": npz.write_npz}
+    if path.suffix not in writers:
+        raise InputError(f"{path}: the ending must be .csv, .nc or .npz")
+    mean = run.mean
+    values = {}
+    for name, entry in run.maps(subtract_noise=subtract_noise).items():
+        unit = entry.unit(mean.units)
+        values[name] = (entry.values, unit)
+        if entry.uncertainty is not None:
+            values[f"{name}_uncertainty"] = (entry.uncertainty, unit)
+    try:
+        writers[path.suffix](path, mean, quantities=values, attributes={"session": session.name})
+    except OSError as error:
+        raise InputError(f"{path}: cannot be written ({error.strerror}); choose another place") from None
+
+
+def _changed(bench: Workbench, say) -> list[str]:
+    found = bench.changed_sources()
+    for sentence in found:
+        say(sentence)
+    return found
+
+
+def _flat(row: dict) -> dict:
+    """A row without nested parts, which a table cannot hold."""
+    flat = {}
+    for key, value in row.items():
+        if isinstance(value, dict):
+            flat |= {f"{key}_{inner}": part for inner, part in value.items()}
+        elif not isinstance(value, list):
+            flat[key] = value
+    return flat
+
+
+def _csv(rows: Iterable[dict]) -> str:
+    out, writer = io.StringIO(), None
+    for row in rows:
+        if writer is None:
+            writer = csv.DictWriter(out, row, lineterminator="\n")
+            writer.writeheader()
+        writer.writerow(row)
+    return out.getvalue()
