@@ -8,7 +8,7 @@ from PySide6.QtCore import QTimer
 from fieldview.gui import work
 from fieldview.gui.canvas.arrows import typical_speed
 from fieldview.gui.jobs import LATER, Answer
-from fieldview.gui.picture import Card, MapOf, Measured, Picture, field_parts
+from fieldview.gui.picture import MapOf, Measured, Picture, field_parts
 from fieldview.publish import wording
 
 REST_MS = 30
@@ -219,8 +219,8 @@ class Pursuit:
         if isinstance(got, MapOf):
             if self._desk.picture.map is not None and got.name == self._desk.picture.map.name:
                 self._desk.update(map=got)
-        elif isinstance(got, Card):
-            self._desk.update(cards={**self._desk.picture.cards, got.name: got})
+        elif got:
+            self._desk.update(cards={**self._desk.picture.cards, **{card.name: card for card in got}})
 
     def _got_follow(self, got) -> None:
         frame, share, traced = got

@@ -4,6 +4,7 @@ for every number and only put the answers into the shape that the panels draw.""
 from __future__ import annotations
 
 import os
+import time
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from pathlib import Path
@@ -20,6 +21,9 @@ from fieldview.session.models import RunSource, Session
 THUMBNAIL = (96, 48)
 Report = Callable[[float], None]
 GROWTH_FACTORS = np.linspace(0.1, 2.0, 39)
+DEAL_SECONDS = 0.05
+"""Cards that are ready within this time are drawn together."""
+
 CACHE_BYTES = 400_000_000
 """How much of the replay the window keeps: some dozens of frames of a million nodes."""
 
@@ -182,8 +186,10 @@ def full_map(field: Field, name: str) -> MapOf | None:
     )
 
 
-def deal_cards(field: Field, names) -> Iterator[Card | MapOf | Progress]:
-    """A card for every quantity the field has, the first name's full map with it."""
+def deal_cards(field: Field, names) -> Iterator[MapOf | tuple[Card, ...] | Progress]:
+    """A card for every quantity the field has, a few at a time; the first name's full map before them."""
+    ready: list[Card] = []
+    since = time.monotonic()
     for number, name in enumerate(names):
         try:
             made = full_map(field, name)
@@ -191,8 +197,12 @@ def deal_cards(field: Field, names) -> Iterator[Card | MapOf | Progress]:
             continue
         if number == 0:
             yield made
-        yield _card(made)
-        yield Progress((number + 1) / len(names))
+        ready.append(_card(made))
+        if time.monotonic() - since >= DEAL_SECONDS:
+            yield tuple(ready)
+            yield Progress((number + 1) / len(names))
+            ready, since = [], time.monotonic()
+    yield tuple(ready)
 
 
 def available(field: Field) -> tuple[str, ...]:

@@ -51,6 +51,14 @@ def own_places(tmp_path, monkeypatch):
         monkeypatch.setenv(f"XDG_{name}_HOME", str(tmp_path / "home" / name.lower()))
 
 
+@pytest.fixture(autouse=True)
+def no_rest(monkeypatch):
+    """What gives way to the painting of a frame need not wait in a test."""
+    from fieldview.gui import pursuit
+
+    monkeypatch.setattr(pursuit, "REST_MS", 0)
+
+
 @pytest.fixture(scope="session")
 def frames_on_disk(tmp_path_factory):
     folder = tmp_path_factory.mktemp("frames")
