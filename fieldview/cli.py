@@ -37,7 +37,7 @@ SessionFile = Annotated[Path, typer.Argument(help="A session file, NAME.session.
 Frames = Annotated[
     str | None,
     typer.Option(
-        "--frames", help="Frames by number: 3, 0:100:5 or 0,4,8; mean is the mean of the run", metavar="WHICH"
+        "--frames", help="Frames by number: 3, 0:100:5 or 0,4,8; mean, or fluctuation:3", metavar="WHICH"
     ),
 ]
 

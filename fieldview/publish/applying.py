@@ -26,7 +26,7 @@ from fieldview.publish.measuring import Progress
 from fieldview.publish.sharing import Share, bench_of, in_order
 from fieldview.publish.tables import csv_lines
 from fieldview.session.measure import chosen_frames, frame_row, unanswered
-from fieldview.session.replay import MEAN, Frame, Workbench
+from fieldview.session.replay import Frame, Workbench
 from fieldview.session.store import dump_session, load_session
 
 FORMATS = ("csv", "nc", "npz")
@@ -176,7 +176,7 @@ class _Work:
             raise InputError(f"{self.folder}: is a file; choose a folder for --out")
 
     def field_name(self, frame: Frame) -> str:
-        number = frame if frame == MEAN else f"{frame:05d}"
+        number = frame.replace(":", "_") if isinstance(frame, str) else f"{frame:05d}"
         return f"{self.name}_{number}.{self.to}"
 
     def is_done(self, frame: Frame) -> bool:
@@ -191,9 +191,9 @@ class _Work:
         try:
             field = self.bench.field(frame)
             row = frame_row(self.bench.session, frame, field)
-            tallies = [] if frame == MEAN else self.bench.tallies(frame)
+            tallies = [] if isinstance(frame, str) else self.bench.tallies(frame)
         except UnreadableFrame as error:
-            if frame == MEAN:
+            if isinstance(frame, str):
                 raise
             self._keep(frame, {"skipped": True, "remarks": [f"frame {frame} was skipped: {error}"]})
             return
@@ -225,7 +225,7 @@ class _Work:
         return json.loads(self._part_path(frame).read_text())
 
     def _part_path(self, frame: Frame) -> Path:
-        return self.unfinished / f"{frame}.json"
+        return self.unfinished / f"{str(frame).replace(':', '_')}.json"
 
     def finish(self, parts: list[dict]) -> None:
         """Write table and record, and clear away what was on the way."""
@@ -243,7 +243,7 @@ class _Work:
         """What was done: nothing in it depends on when, where or by whom."""
         session, run = self.bench.session, self.bench.run
         done = [part for part in parts if not part["skipped"]]
-        lines = self.bench.tallies(self.frames[0]) if self.frames[0] != MEAN else []
+        lines = self.bench.tallies(self.frames[0]) if not isinstance(self.frames[0], str) else []
         return {
             "format": "loopflux-record",
             "version": 1,

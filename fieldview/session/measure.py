@@ -11,7 +11,7 @@ from fieldview.compute.region import RegionNumbers, measure_region, prepare
 from fieldview.files import UnreadableFrame
 from fieldview.session.models import Session
 from fieldview.session.regions import Region
-from fieldview.session.replay import MEAN, Frame, Workbench
+from fieldview.session.replay import Frame, Workbench
 
 NUMBERS = {
     "circulation": "circulation",
@@ -79,7 +79,7 @@ def measure_frames(
         try:
             row = frame_row(bench.session, frame, bench.field(frame))
         except UnreadableFrame as error:
-            if on_skip is None or frame == MEAN:
+            if on_skip is None or isinstance(frame, str):
                 raise
             on_skip(frame, error)
             last_error = error

@@ -20,10 +20,12 @@ from fieldview.files import Run, open_run
 from fieldview.session.ledger import Tally, apply_line, sentence, switched_off
 from fieldview.session.mean import mean_of
 from fieldview.session.models import Session
+from fieldview.session.statistics import fluctuation
 from fieldview.session.steps import Calibrate, TimeTest, TurnAxes
 from fieldview.session.wording import figure
 
 MEAN = "mean"
+FLUCTUATION = "fluctuation:"
 NOISE_FRAMES = 8
 """Frames looked at where the noise level is estimated from the run, spread evenly over it."""
 
@@ -31,7 +33,9 @@ Frame = int | str
 
 
 def evaluate(session: Session, frame: Frame = 0, *, upto: int | None = None) -> Field:
-    """One frame after the ledger, or after its first ``upto`` lines; frame "mean" is the run's mean.
+    """One frame after the ledger, or after its first ``upto`` lines.
+
+    Frame "mean" is the run's mean, "fluctuation:3" is frame 3 less it.
 
     Raises InputError where the run or the session cannot be used.
     """
@@ -75,7 +79,7 @@ class Workbench:
         return Units() if calibrated else self.run.units
 
     def frames(self, spec: str | None = None) -> list[Frame]:
-        """Frame numbers for a text like ``0:100:5``, ``3``, ``0,4,8`` or ``mean``; all for None.
+        """Frames for a text like ``0:100:5``, ``3``, ``0,4,8``, ``mean`` or ``fluctuation:3``; all for None.
 
         Raises InputError for any other text and for frames the run does not have.
         """
@@ -84,11 +88,19 @@ class Workbench:
     def field(self, frame: Frame = 0, *, upto: int | None = None) -> Field:
         """One frame after the ledger, or after its first ``upto`` lines."""
         count = len(self.session.ledger) if upto is None else min(upto, len(self.session.ledger))
-        if frame == MEAN:
-            return mean_of(self.field(number, upto=count) for number in range(len(self.run)))
+        if isinstance(frame, str):
+            return self._of_the_run(frame, count)
         if not 0 <= int(frame) < len(self.run):
             raise InputError(f"frame {frame} does not exist; the run has frames 0 to {len(self.run) - 1}")
         return self._state(int(frame), count)[0].with_(derivative=self.session.derivative)
+
+    def _of_the_run(self, frame: str, count: int) -> Field:
+        """The run's mean, or a frame less that mean."""
+        mean = mean_of(self.field(number, upto=count) for number in range(len(self.run)))
+        if frame == MEAN:
+            return mean
+        number = int(frame.removeprefix(FLUCTUATION))
+        return fluctuation(self.field(number, upto=count), mean, len(self.run))
 
     def tallies(self, frame: int) -> list[Tally]:
         """What every ledger line did to one frame."""
@@ -316,6 +328,9 @@ def parse_frames(spec: str | None, count: int) -> list[Frame]:
         return list(range(count))
     if spec.strip() == MEAN:
         return [MEAN]
+    if spec.strip().startswith(FLUCTUATION):
+        (number,) = parse_frames(spec.strip().removeprefix(FLUCTUATION), count)[:1]
+        return [f"{FLUCTUATION}{number}"]
     chosen: list[Frame] = []
     for part in spec.split(","):
         try:
@@ -323,7 +338,10 @@ def parse_frames(spec: str | None, count: int) -> list[Frame]:
         except ValueError:
             bounds = []
         if not 1 <= len(bounds) <= 3 or bounds == [None] or (len(bounds) == 3 and bounds[2] == 0):
-            raise InputError(f'frames "{spec}": write a number, start:stop:step, a list with commas, or mean')
+            raise InputError(
+                f'frames "{spec}": write a number, start:stop:step, a list with commas, mean '
+                "or fluctuation:NUMBER"
+            )
         if len(bounds) == 1:
             chosen.append(bounds[0])
         else:

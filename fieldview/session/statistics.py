@@ -129,13 +129,7 @@ class RunStatistics:
 
         Its random errors are those of the frame; the mean's own are smaller by the root of its frames.
         """
-        mean = self.mean if mean is None else mean
-        lost = field.valid & ~mean.valid
-        status = np.where(lost, np.uint8(Status.MISSING), field.status)
-        parts = {name: part - getattr(mean, name) for name, part in field.components.items()}
-        measured = {name: field.measured[name] - getattr(mean, name) for name in parts}
-        notes = (*field.notes, f"fluctuation about the mean over {self.frames} frames")
-        return field.with_(**parts, status=status, measured=measured, notes=notes)
+        return fluctuation(field, self.mean if mean is None else mean, self.frames)
 
     def maps(self, *, subtract_noise: bool = False) -> dict[str, StatisticMap]:
         """Every statistic by name, see `fieldview.compute.statistics.statistic_maps`."""
@@ -287,14 +281,14 @@ def frame_numbers(bench, frames: Iterable[int] | str | None) -> list[int]:
     return [int(frame) for frame in chosen]
 
 
-def derived_field(bench, spec: str, statistics: RunStatistics | None = None) -> Field:
-    """A frame made of the whole run: ``"mean"``, or ``"fluctuation:7"`` for frame 7 less the mean."""
-    kind, _, rest = spec.partition(":")
-    if kind == "mean" and not rest:
-        return (statistics or run_statistics(bench)).mean
-    if kind == "fluctuation" and rest.isdigit():
-        return (statistics or run_statistics(bench)).fluctuation(bench.field(int(rest)))
-    raise InputError(f'frame "{spec}" is not known; write a number, mean or fluctuation:NUMBER')
+def fluctuation(field: Field, mean: Field, frames: int) -> Field:
+    """One frame less the mean over so many frames; see `RunStatistics.fluctuation`."""
+    lost = field.valid & ~mean.valid
+    status = np.where(lost, np.uint8(Status.MISSING), field.status)
+    parts = {name: part - getattr(mean, name) for name, part in field.components.items()}
+    measured = {name: field.measured[name] - getattr(mean, name) for name in parts}
+    notes = (*field.notes, f"fluctuation about the mean over {frames} frames")
+    return field.with_(**parts, status=status, measured=measured, notes=notes)
 
 
 # --- rows ------------------------------------------------------------------------------------------

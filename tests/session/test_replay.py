@@ -143,7 +143,7 @@ def test_changed_sources_are_said(session, tmp_path):
 @pytest.mark.parametrize(
     ("spec", "frames"),
     [(None, list(range(10))), ("3", [3]), ("0:100:5", [0, 5]), ("7:", [7, 8, 9]), ("1,4,2", [1, 4, 2]),
-     ("-3:", [7, 8, 9]), ("mean", ["mean"])],
+     ("-3:", [7, 8, 9]), ("mean", ["mean"]), ("fluctuation:3", ["fluctuation:3"])],
 )  # fmt: skip
 def test_frames_are_chosen_by_a_text(spec, frames):
     assert parse_frames(spec, 10) == frames

@@ -15,7 +15,7 @@ from fieldview.compute.smoothing import smoothing_map
 from fieldview.session import statistics
 from fieldview.session.mean import mean_of
 from fieldview.session.replay import Workbench
-from fieldview.session.statistics import RunStatistics, derived_field, run_statistics, statistics_of
+from fieldview.session.statistics import RunStatistics, run_statistics, statistics_of
 from tests.compute.test_lag_window import ar1
 from tests.session.runs import edited, vortex_frames
 
@@ -234,8 +234,8 @@ def test_a_session_s_run_and_its_derived_frames(tmp_path):
     run = run_statistics(bench, on_frame=done.append)
     assert done == list(range(12))
     wanted = bench.field("mean")
-    np.testing.assert_allclose(derived_field(bench, "mean", run).u, wanted.u, rtol=1e-12, equal_nan=True)
-    fluctuation = derived_field(bench, "fluctuation:5", run)
+    np.testing.assert_allclose(run.mean.u, wanted.u, rtol=1e-12, equal_nan=True)
+    fluctuation = bench.field(bench.frames("fluctuation:5")[0])
     there = fluctuation.valid
     np.testing.assert_allclose((fluctuation.v + wanted.v)[there], bench.field(5).v[there], atol=1e-15)
     rows = run.rows(subtract_noise=True, points=[(0.02, 0.016)])
@@ -244,8 +244,8 @@ def test_a_session_s_run_and_its_derived_frames(tmp_path):
     assert by_name["mean_u"]["unit"] == "m/s" and by_name["tke"]["unit"] == "m^2/s^2"
     assert by_name["mean_u"]["points"][0]["node"] == [8, 10]
     assert by_name["count"]["highest"] == 12.0
-    with pytest.raises(InputError, match='frame "fluctuation" is not known'):
-        derived_field(bench, "fluctuation", run)
+    with pytest.raises(InputError, match='frames "fluctuation": write a number'):
+        bench.frames("fluctuation")
 
 
 def test_smoothed_vectors_carry_the_noise_that_smoothing_leaves():
