@@ -17,6 +17,8 @@ to frame until you ask (View menu).</p>
 double click: fit. A tap on
 Space:
 play.</p>
+<p>Seed (S) draws the streamline through a place: fourth-order Runge–Kutta steps of a quarter spacing through
+the bilinear interpolant. Ctrl snaps a place to the nearest node, or to a corner of another region.</p>
 <p>Drawing: click corners, Return or a double click closes, Backspace takes one back, Esc drops the drawing,
 Shift keeps it straight or square. Drag a region's handles or its inside with Move (V); the numbers
 follow.</p>
@@ -100,7 +102,8 @@ on every frame, measured in the background on request. <b>Profile</b>: the compo
 
 _TIME = """
 <p>A tick for every frame; its filled part is the share measured, once the frame has been looked at. Drag to
-scrub, ←/→ step, Home and End, a tap on Space plays. <b>mean</b> shows the mean of the measured vectors
+scrub, ←/→ step, Home and End, a tap on Space plays. <b>fluct.</b> shows the frame less the run's mean.
+<b>mean</b> shows the mean of the measured vectors
 over the
 run.</p>
 """

@@ -73,7 +73,7 @@ class Pursuit:
         of_frame = None if shown.source == "mean" else shown.frame
         key = (field_parts(session), of_frame, shown.source, shown.as_of)
         if self._changed("field", key):
-            self._run_key = (field_parts(session), shown.source, shown.as_of)
+            self._run_key = (field_parts(session), shown.as_of)
             known = self._whole_run[1] if self._whole_run[0] == self._run_key else None
             over_run = shown.source != "frame" and known is None
             self._desk.jobs.submit(

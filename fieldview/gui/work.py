@@ -86,30 +86,30 @@ def evaluate(
     report: Report,
 ) -> Evaluated:
     """One frame after the ledger, the run's mean, or the frame less the mean; mapped, its regions measured
-    quickly. ``whole_run`` is what an earlier answer found out about all frames, or None."""
+    quickly. ``whole_run`` is the run's mean as an earlier answer found it, or None."""
     from fieldview.compute.region import prepare
+    from fieldview.session.statistics import fluctuation
 
     run_before, bench = bench.run, bench.updated(session)
     facts = _facts(bench.run) if bench.run is not run_before else None
     frame = min(frame, len(bench.run) - 1)
     if source != "frame" and whole_run is None:
-        whole_run = over_run(bench, source, as_of, report)
+        whole_run = mean_over_run(bench, as_of, report)
     if source == "mean":
         field, tallies = whole_run, ()
     else:
         field, tallies = bench.field(frame, upto=as_of), tuple(bench.tallies(frame))
     if source == "fluctuation":
-        field = whole_run.fluctuation(field)
+        field = fluctuation(field, whole_run, len(bench.run))
     prepared = prepare(field)
     measured = {m.region.name: m for m in measure_quickly(session, field, prepared, session.regions)}
     shown = quick_map(field, quantity)
     return Evaluated(bench, field, frame, tallies, shown, prepared, measured, facts, whole_run)
 
 
-def over_run(bench: Any, source: str, as_of: int | None, report: Report) -> Any:
-    """The run's mean as a field (source "mean"), or its statistics, which fluctuations need."""
+def mean_over_run(bench: Any, as_of: int | None, report: Report) -> Field:
+    """The run's mean, frame by frame, so that it can be followed and cancelled."""
     from fieldview.session.mean import mean_of
-    from fieldview.session.statistics import statistics_of
 
     def frames() -> Iterator[Field]:
         count = len(bench.run)
@@ -117,7 +117,7 @@ def over_run(bench: Any, source: str, as_of: int | None, report: Report) -> Any:
             report(frame / count)
             yield bench.field(frame, upto=as_of)
 
-    return mean_of(frames()) if source == "mean" else statistics_of(frames())
+    return mean_of(frames())
 
 
 def measure_quickly(session: Session, field: Field, prepared: Any, wanted) -> list[Measured]:

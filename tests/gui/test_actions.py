@@ -107,3 +107,30 @@ def inside_another(widget) -> bool:
         or (isinstance(owner, QWidget) and isinstance(owner.parent(), QComboBox))
         or (isinstance(widget, QToolButton) and widget.objectName() == "qt_toolbar_ext_button")
     )
+
+
+def shortcuts():
+    return [(c.id, keys) for c in all_commands() if c.shortcut for keys in c.shortcut.split(" | ")]
+
+
+def test_every_shortcut_reaches_its_command(window, qtbot, monkeypatch):
+    """Real key events; the commands themselves are tested elsewhere and only counted here."""
+    window.desk.show(selected="core", frame=1)
+    settle(qtbot, window)
+    action(window, "region.duplicate").trigger()
+    window.desk.show(selected="core")
+    action(window, "region.duplicate").trigger()
+    window.desk.undo()  # something to undo, something to redo
+    window.desk.show(selected="core")
+    settle(qtbot, window)
+    for id, keys in shortcuts():
+        command = window.actions_table.commands[id]
+        counted = []
+        act = action(window, id)
+        assert act.isEnabled(), id
+        act.triggered.disconnect()
+        act.triggered.connect(lambda *_, id=id, counted=counted: counted.append(id))
+        window.canvas.setFocus()
+        combination = QKeySequence(keys)[0]
+        QTest.keyClick(window.canvas, combination.key(), combination.keyboardModifiers())
+        assert counted == [id], f"{keys} for {command.title}"

@@ -213,20 +213,24 @@ def test_the_mean_is_shown_as_a_frame_like_any_other(window, qtbot):
 
 
 def test_the_fluctuation_is_the_frame_less_the_mean(window, qtbot):
-    frames = []
-    for frame in range(FRAMES):
-        window.desk.go_to(frame)
-        settle(qtbot, window)
-        frames.append(window.desk.picture.field)
+    from fieldview.session.measure import measure
+
+    window.desk.go_to(2)
+    settle(qtbot, window)
     QTest.mouseClick(window.time_strip._sources["fluctuation"], Qt.MouseButton.LeftButton)
     settle(qtbot, window)
-    measured = [np.where(f.status == Status.MEASURED, f.u, np.nan) for f in frames]
-    expected = frames[-1].u - np.ma.masked_invalid(measured).mean(axis=0).filled(np.nan)
-    np.testing.assert_allclose(window.desk.picture.field.u, expected, atol=1e-12)
     assert "less the mean" in window.status.frame.text()
-    window.desk.go_to(0)
-    settle(qtbot, window)
-    assert window.desk.picture.field_frame == 0
+    for frame in (2, 0):
+        window.desk.go_to(frame)
+        settle(qtbot, window)
+        shown = window.desk.picture.measured_of(window.session.regions[0]).row
+        assert shown == measure(window.session, frames=f"fluctuation:{frame}")[0]["regions"][0]
+    # against the definition
+    bench = Workbench(window.session)
+    frames = [bench.field(frame) for frame in range(FRAMES)]
+    measured = [np.where(f.status == Status.MEASURED, f.u, np.nan) for f in frames]
+    expected = frames[0].u - np.ma.masked_invalid(measured).mean(axis=0).filled(np.nan)
+    np.testing.assert_allclose(window.desk.picture.field.u, expected, atol=1e-12)
 
 
 def test_work_over_the_run_shows_its_progress_and_can_be_cancelled(window, qtbot, monkeypatch):
@@ -234,13 +238,13 @@ def test_work_over_the_run_shows_its_progress_and_can_be_cancelled(window, qtbot
 
     began = threading.Event()
 
-    def endless(bench, source, as_of, report):
+    def endless(bench, as_of, report):
         while True:
             began.set()
             report(0.25)
             time.sleep(0.005)
 
-    monkeypatch.setattr(work, "over_run", endless)
+    monkeypatch.setattr(work, "mean_over_run", endless)
     monkeypatch.setattr(status_line, "PATIENCE", 0.0)
     before = window.desk.picture.field
     QTest.mouseClick(window.time_strip._sources["mean"], Qt.MouseButton.LeftButton)

@@ -39,10 +39,10 @@ class Plot(pg.PlotWidget):
     def start(self, x_label: str, y_label: str, *, zero: bool = True) -> None:
         """An empty plot with these axes; ``zero`` draws the zero line and keeps it in sight."""
         self.clear()
-        self.show_axes(False)
         style = {"color": self.theme.muted, "font-size": f"{themes.SMALL_PIXELS}px"}
         self.setLabel("bottom", x_label, **style)
         self.setLabel("left", y_label, **style)
+        self.show_axes(False)
         if zero:
             self.addItem(pg.InfiniteLine(0, 0, pen=pg.mkPen(self.theme.hairline, width=1)))
 

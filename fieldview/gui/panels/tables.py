@@ -15,6 +15,9 @@ RAW = Qt.ItemDataRole.UserRole
 SLACK = 12
 """How much wider than its texts a column may stay, so that digits that come and go do not shake it. [px]"""
 
+WIDEST = 420
+"""A column of sentences goes no further; the whole sentence is in the tip. [px]"""
+
 
 @dataclass(frozen=True)
 class Cell:
@@ -95,7 +98,7 @@ def fit_columns(view: QTableView, *, first: int = 0) -> None:
     model, header = view.model(), view.horizontalHeader()
     for column, title in enumerate(model.titles):
         wide = max([_title_width(title), *(_width(row[column].text) for row in model.rows)])
-        wanted = wide + 2 * GRID + (first if column == 0 else 0)
+        wanted = min(wide + 2 * GRID + (first if column == 0 else 0), WIDEST)
         if not 0 <= header.sectionSize(column) - wanted <= SLACK:
             header.resizeSection(column, wanted)
 
