@@ -199,6 +199,8 @@ def _rows(line: Line, rule: Scheme, valid: np.ndarray, nodes: np.ndarray) -> sp.
         done[np.flatnonzero(inside)[fits]] = True
         add(open_[done], members[fits], line.weights(choice, nodes[open_[done]]))
         open_ = open_[~done]
+        if open_.size == 0:
+            break
     entries = (np.concatenate(weights), (np.concatenate(rows), np.concatenate(columns)))
     return sp.csr_array(entries, shape=(nodes.size, valid.size))
 

@@ -156,14 +156,19 @@ def _box_sum(block: np.ndarray, nodes: int, axis: int) -> np.ndarray:
     """Sums over this many neighbouring nodes along an axis, those that reach beyond the block too."""
     if nodes == 1:
         return block
+    count = block.shape[axis]
     shape = list(block.shape)
     shape[axis] += nodes - 1
     total = np.empty(shape, block.dtype)
-    lines, own = np.moveaxis(total, axis, 0), np.moveaxis(block, axis, 0)
-    lines[: own.shape[0]] = own
-    lines[own.shape[0] :] = 0
+
+    def lines(first: int, last: int | None) -> np.ndarray:
+        return total[first:last] if axis == 0 else total[:, first:last]
+
+    lines(0, count)[:] = block
+    lines(count, None)[:] = 0
     for shift in range(1, nodes):
-        lines[shift : shift + own.shape[0]] += own
+        moved = lines(shift, shift + count)
+        moved += block
     return total
 
 
