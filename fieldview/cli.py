@@ -44,6 +44,7 @@ Frames = Annotated[
 Out = Annotated[
     Path | None, typer.Option("--out", help="Write to this file instead of stdout", metavar="FILE")
 ]
+Strict = Annotated[bool, typer.Option("--strict", help="End at the first frame that cannot be read")]
 Workers = Annotated[int, typer.Option("--workers", help="Processes that share the frames", metavar="N")]
 Cluster = Annotated[
     str | None,
@@ -137,6 +138,7 @@ def measure(
     frames: Frames = None,
     format: Annotated[str, typer.Option("--format", help="table, csv or json")] = "table",
     out: Out = None,
+    strict: Strict = False,
     workers: Workers = 1,
     cluster: Cluster = None,
 ) -> int:
@@ -148,7 +150,9 @@ def measure(
         raise InputError(f"--format {format} is not known; use {', '.join(FORMATS)}")
     _check_place(out)
     with sharing.workers(workers, cluster) as executor:
-        done = measurement(session, frames, format, progress=_progress, say=_say, executor=executor)
+        done = measurement(
+            session, frames, format, progress=_progress, say=_say, executor=executor, strict=strict
+        )
     with done.text as text:
         if out is None:
             for block in iter(lambda: text.read(1 << 20), ""):
@@ -233,6 +237,7 @@ def apply(
         str | None,
         typer.Option("--quantities", help="Derived quantities to write too, such as vorticity,speed"),
     ] = None,
+    strict: Strict = False,
     workers: Workers = 1,
     cluster: Cluster = None,
 ) -> int:
@@ -251,6 +256,7 @@ def apply(
             progress=_progress,
             say=_say,
             executor=executor,
+            strict=strict,
         )
     return WITH_REMARKS if remarks else DONE
 

@@ -43,12 +43,15 @@ def apply_session(
     progress: Progress,
     say,
     executor: Executor | None = None,
+    strict: bool = False,
 ) -> bool:
     """Write the cleaned fields of a session's frames into a folder; True where there was anything to remark.
 
     NAME_NNNNN.csv, .nc or .npz for each frame, ``regions.csv`` and ``record.json``. The same session goes on
     in a folder where it was stopped; ``say`` is told every changed source, skipped frame and region without
     an answer.
+
+    ``strict`` ends the work at the first frame that cannot be read.
 
     Raises InputError where the session, the run, the frames or the folder cannot be used; nothing is written
     then.
@@ -73,9 +76,12 @@ def apply_session(
         return bool(remarks or finished)
     work.claim_folder()
     waiting = [frame for frame in work.frames if not work.is_done(frame)]
-    jobs = [(Share.of(bench.session), work.order, (frame,)) for frame in waiting]
-    for _ in progress(in_order(_do, jobs, executor), "applying", len(waiting)):
-        pass
+    share = Share.of(bench.session)
+    jobs = [(share, work.order, frame) for frame in waiting]
+    for frame, skipped in progress(in_order(_do, jobs, executor), "applying", len(waiting)):
+        if skipped and strict:
+            work.forget(frame)  # tried again where the same work goes on
+            raise InputError(skipped)
     parts = [work.part(frame) for frame in work.frames]
     for part in parts:
         for sentence in part["remarks"]:
@@ -87,12 +93,10 @@ def apply_session(
     return bool(remarks) or any(part["remarks"] for part in parts)
 
 
-def _do(job) -> None:
-    """The part of the work that one job is, in this or another process."""
-    share, order, frames = job
-    work = _Work(bench=bench_of(share), **order)
-    for frame in frames:
-        work.do(frame)
+def _do(job) -> tuple[Frame, str]:
+    """One frame's work, in this or another process: the frame, and why it was skipped or nothing."""
+    share, order, frame = job
+    return frame, _Work(bench=bench_of(share), **order).do(frame)
 
 
 @dataclass(frozen=True, eq=False)
@@ -186,8 +190,8 @@ class _Work:
             return False
         return json.loads(text)["skipped"] or (self.folder / self.field_name(frame)).is_file()
 
-    def do(self, frame: Frame) -> None:
-        """Write one frame's field and its part of the table."""
+    def do(self, frame: Frame) -> str:
+        """Write one frame's field and its part of the table; returns why it was skipped, or nothing."""
         try:
             field = self.bench.field(frame)
             row = frame_row(self.bench.session, frame, field)
@@ -195,8 +199,9 @@ class _Work:
         except UnreadableFrame as error:
             if isinstance(frame, str):
                 raise
-            self._keep(frame, {"skipped": True, "remarks": [f"frame {frame} was skipped: {error}"]})
-            return
+            why = f"frame {frame} was skipped: {error}"
+            self._keep(frame, {"skipped": True, "remarks": [why]})
+            return why
         part = {
             "skipped": False,
             "remarks": [f'frame {frame}: "{name}" has no value' for name in unanswered(row)],
@@ -217,6 +222,11 @@ class _Work:
             quantities=_values(field, self.quantities),
             attributes=attributes,
         )
+        return ""
+
+    def forget(self, frame: Frame) -> None:
+        """A frame as if it had not been tried."""
+        self._part_path(frame).unlink(missing_ok=True)
 
     def _keep(self, frame: Frame, part: dict) -> None:
         write_whole(self._part_path(frame), json.dumps(part, allow_nan=False).encode())

@@ -37,8 +37,11 @@ def measurement(
     progress: Progress,
     say,
     executor: Executor | None = None,
+    strict: bool = False,
 ) -> Measurement:
     """Measure a session file; ``say`` is told every changed source, skipped frame and unanswered region.
+
+    A ``strict`` measurement ends at the first frame that cannot be read.
 
     The text is written to a scratch file as it comes, so that memory does not grow with the frames and
     nothing comes out where the session turns out to be bad.
@@ -58,7 +61,7 @@ def measurement(
 
     for sentence in bench.changed_sources():
         remark(sentence)
-    rows = _rows(bench, chosen, remark, executor)
+    rows = _rows(bench, chosen, remark, executor, strict)
     rows = progress(rows, "measuring", len(chosen))
     text = tempfile.TemporaryFile("w+", encoding="utf-8", newline="")  # noqa: SIM115 - handed on
     try:
@@ -71,13 +74,15 @@ def measurement(
     return Measurement(text, bool(said))
 
 
-def _rows(bench: Workbench, frames: list, remark, executor: Executor | None) -> Iterator[dict]:
+def _rows(bench: Workbench, frames: list, remark, executor: Executor | None, strict: bool) -> Iterator[dict]:
     """Rows of the frames in their order, whoever makes them."""
     share = Share.of(bench.session)
     jobs = [(share, part) for part in portions(frames)]
     done, last_error = 0, None
     for results in in_order(_measured, jobs, executor):
         for frame, row, error in results:
+            if row is None and strict:
+                raise InputError(f"frame {frame}: {error}")
             if row is None:
                 remark(f"frame {frame} was skipped: {error}")
                 last_error = error

@@ -139,3 +139,23 @@ def test_a_bad_frame_is_left_out_and_recorded(tmp_path, capsys):
     assert sorted(os.listdir(out)) == ["a_00000.csv", "a_00002.csv", "record.json", "regions.csv"]
     record = json.loads((out / "record.json").read_text())
     assert "f1.csv" in record["frames"][1]["remarks"][0]
+
+
+def test_strict_ends_at_a_bad_frame(tmp_path, capsys):
+    run = vortex_frames(tmp_path, 4)
+    good = (tmp_path / "f2.csv").read_text()
+    (tmp_path / "f2.csv").write_text("x [m],y [m],u [m/s],v [m/s]\n0,0,nonsense,1\n")
+    session = tmp_path / "a.session.json"
+    save_session(edited(run, regions=REGIONS, error_model=MODEL), session)
+    out = tmp_path / "out"
+    assert cli.run(["measure", str(session), "--strict"]) == 2
+    told = capsys.readouterr()
+    assert told.out == "" and "frame 2: f2.csv" in told.err
+    assert cli.run(["apply", str(session), "--out", str(out), "--strict"]) == 2
+    assert "frame 2 was skipped: f2.csv" in capsys.readouterr().err
+    assert (out / "a_00001.csv").is_file() and not (out / "record.json").exists()
+    (tmp_path / "f2.csv").write_text(good)
+    # other sources than before: the results so far are not theirs
+    assert cli.run(["apply", str(session), "--out", str(out), "--strict"]) == 2
+    assert "holds the results of another session, other sources" in capsys.readouterr().err
+    assert cli.run(["apply", str(session), "--out", str(tmp_path / "anew"), "--strict"]) == 0
