@@ -94,11 +94,11 @@ def remarks(field: Field, numbers: list[Number]) -> list[str]:
     """What the reader of these numbers must know: parts not stated, and what the random part rests on."""
     budgets = [part for number in numbers for part in number.budget]
     said = []
-    if any(part.kind == "random" for part in budgets):
-        if all(part.uncertainty is None for part in budgets if part.kind == "random"):
-            said.append(NO_SIGMA if field.error.sigma is None else _incomplete(field))
-        elif not field.error.correlation_stated:
-            said.append(LOWER_BOUND)
+    random = [part.uncertainty for part in budgets if part.kind == "random"]
+    if None in random:
+        said.append(NO_SIGMA if field.error.sigma is None else _incomplete(field))
+    if any(random) and not field.error.correlation_stated:
+        said.append(LOWER_BOUND)
     missing = [p.name for p in budgets if p.kind == "systematic" and p.uncertainty is None]
     if missing:
         names = ", ".join(name.replace("_", " ") for name in dict.fromkeys(missing))
@@ -111,6 +111,7 @@ def _incomplete(field: Field) -> str:
     absent = [name for name in field.components if name not in field.error.sigma]
     if absent:
         return (
-            f"no sigma is stated for {', '.join(absent)}: the random and combined uncertainty are not known"
+            f"no sigma is stated for {', '.join(absent)}: "
+            "random and combined uncertainties that need it are not known"
         )
     return "sigma is missing at some of the vectors used: the random and combined uncertainty are not known"

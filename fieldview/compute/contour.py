@@ -7,6 +7,7 @@ from functools import cached_property
 import numpy as np
 
 from fieldview.compute.area_sums import AreaPieces, area_pieces, area_weights
+from fieldview.compute.field import Status
 from fieldview.compute.line_weights import bilinear_weights, corner_nodes
 from fieldview.compute.node_weights import NodeWeights
 from fieldview.compute.pieces import Pieces, cut
@@ -81,14 +82,20 @@ class Contour:
     def obstacle(self) -> str:
         """Where and why the contour is not measured, in words."""
         first = int(np.flatnonzero(~self.measured & (self.pieces.lengths > 0))[0])
-        ny, nx = self.prepared.cells.shape
-        iy, ix = self.pieces.iy[first], self.pieces.ix[first]
         z = self.pieces.places()[first]
         what = "the contour" if self.shape.closed else "the line"
-        inside = 0 <= iy < ny and 0 <= ix < nx and self.grid.is_plane
-        does = "passes a gap" if inside else "leaves the grid"
+        does, remedy = self._hindrance(int(self.pieces.iy[first]), int(self.pieces.ix[first]))
         missed = f"{percent(1 - self.contour_share)} of it is not measured"
-        return f"{what} {does} at ({z.real:.4g}, {z.imag:.4g}); {missed}"
+        return f"{what} {does} at ({z.real:.4g}, {z.imag:.4g}) and {missed}; {remedy}"
+
+    def _hindrance(self, iy: int, ix: int) -> tuple[str, str]:
+        """What is in the way in a cell that is not measured, and what to do about it."""
+        ny, nx = self.prepared.cells.shape
+        if not (0 <= iy < ny and 0 <= ix < nx and self.grid.is_plane):
+            return "leaves the grid", "draw it no further than the outermost nodes"
+        if (self.prepared.field.status[iy : iy + 2, ix : ix + 2] == Status.MASKED).any():
+            return "passes the mask", "draw it clear of the mask"
+        return "passes a gap", "draw it round the gap or fill the gap"
 
     # --- the line ----------------------------------------------------------------------------------
 

@@ -79,12 +79,12 @@ def _vorticity(contour: Contour, integral: Number, nodes: Within) -> dict[str, N
     prepared, area = contour.prepared, contour.shape.area
     field, unit = prepared.field, prepared.field.units.of(0, -1)
     mean = integral.value / area
-    random = [
+    random_and_gaps = [
         replace(part, uncertainty=None if part.uncertainty is None else part.uncertainty / area)
         for part in integral.budget
-        if part.kind == "random"
+        if part.kind != "systematic"
     ]
-    number = made(mean, unit, *random, systematic_parts(field, mean, scale=0))
+    number = made(mean, unit, random_and_gaps, systematic_parts(field, mean, scale=0))
     return {"mean": number, **_extremes(prepared.vorticity, nodes, unit, contour, "vorticity")}
 
 

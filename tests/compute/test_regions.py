@@ -7,7 +7,7 @@ import pytest
 
 from fieldview.compute import shapes
 from fieldview.compute.contour import Contour
-from fieldview.compute.field import Field
+from fieldview.compute.field import Field, Status
 from fieldview.compute.grid import Grid, Placement
 from fieldview.compute.region import measure_region, prepare, quick_numbers
 from tests.compute.contours import PLACEMENTS, area_integral, line_integral, middle, reach, star
@@ -293,6 +293,29 @@ def test_null_values_carry_their_reason():
     assert crossing.circulation.value is None and "crosses itself" in crossing.warnings[0]
     far = measure_region(field, shapes.circle((100, 100), 3))
     assert far.coverage["contour"] == 0.0 and far.coverage["area"] == 0.0
+
+
+def test_an_obstacle_is_named_with_its_remedy():
+    grid = Grid(np.arange(11.0), np.arange(11.0))
+    status = np.zeros(grid.shape, np.uint8)
+    status[5, 5] = Status.MASKED
+    shape = shapes.rectangle(((1, 1), (5.5, 9)))
+    absent = status > 0
+    masked = measure_region(linear_field(grid, ((0, -1), (1, 0)), missing=absent, status=status), shape)
+    assert "passes the mask" in masked.warnings[0] and "clear of the mask" in masked.warnings[0]
+    status[5, 5] = Status.MISSING
+    missing = measure_region(linear_field(grid, ((0, -1), (1, 0)), missing=absent, status=status), shape)
+    assert "passes a gap" in missing.warnings[0] and "fill the gap" in missing.warnings[0]
+    outside = measure_region(linear_field(grid, ((0, -1), (1, 0))), shapes.circle((9, 5), 3))
+    assert "outermost nodes" in outside.warnings[0]
+
+
+def test_a_contour_through_a_stagnation_point_has_no_index():
+    """The point lies between two of the places at which the direction is looked at."""
+    grid = Grid(np.arange(9.0), np.arange(9.0))
+    field = linear_field(grid, ((0, -1 / 1.3), (1, 0)))  # at rest at (2, 1.3)
+    through = measure_region(field, shapes.rectangle(((2.0, 0.5), (6.0, 5.0))))
+    assert through.index is None and any("vanishes on the contour" in said for said in through.warnings)
 
 
 def test_quick_and_full_numbers_are_the_same():
