@@ -176,7 +176,7 @@ class Contour:
     @cached_property
     def rates(self) -> NodeWeights:
         """Complex weights of (integral of vorticity, integral of divergence)."""
-        return rate_weights(*self.area, self.prepared)
+        return rate_weights(*self.area, self.prepared, self.corner_nodes.ravel())
 
     def block(self, values: np.ndarray) -> np.ndarray:
         """The part of node values (ny, nx) or (ny * nx,) that lies in the block of `area`."""

@@ -50,10 +50,10 @@ def _plane(contour: Contour, nodes: Within) -> dict[str, dict[str, Number]]:
             random_part(part),
             systematic_parts(field, float(value), scale=1, tilt=float(abs(across)), offset=1.0),
         )
-        found[name] = {"mean": number, **_extremes(prepared.component(name), nodes, unit, contour, name)}
+        found[name] = {"mean": number, **_extremes(nodes, unit, contour, name)}
     found["speed"] = {
         "mean": _mean_speed(contour),
-        **_extremes(prepared.speed, nodes, unit, contour, "speed"),
+        **_extremes(nodes, unit, contour, "speed"),
     }
     return found
 
@@ -85,7 +85,7 @@ def _vorticity(contour: Contour, integral: Number, nodes: Within) -> dict[str, N
         if part.kind != "systematic"
     ]
     number = made(mean, unit, random_and_gaps, systematic_parts(field, mean, scale=0))
-    return {"mean": number, **_extremes(prepared.vorticity, nodes, unit, contour, "vorticity")}
+    return {"mean": number, **_extremes(nodes, unit, contour, "vorticity")}
 
 
 def _through(contour: Contour, nodes: Within) -> dict[str, Number]:
@@ -100,15 +100,16 @@ def _through(contour: Contour, nodes: Within) -> dict[str, Number]:
         random_part(through_variance(share, field)),
         systematic_parts(field, mean, scale=1, offset=1.0),
     )
-    return {"mean": number, **_extremes(prepared.through, nodes, unit, contour, "w")}
+    return {"mean": number, **_extremes(nodes, unit, contour, "w")}
 
 
-def _extremes(values: np.ndarray, nodes: Within, unit: str, contour: Contour, name: str) -> dict[str, Number]:
+def _extremes(nodes: Within, unit: str, contour: Contour, name: str) -> dict[str, Number]:
     """Least and greatest of a quantity at these nodes, each with the budget of its node."""
-    at = [nodes.extreme(values, rule) for rule in (np.minimum, np.maximum)]
-    if None in at:
+    values = contour.prepared.extremes(name)
+    at = nodes.extremes(values)
+    if at is None:
         return {"min": Number(None, unit), "max": Number(None, unit)}
-    found = [float(values[node]) for node in at]
+    found = [float(values.values[node]) for node in at]
     budgets = zip(_random_at(contour, name, at), found, at, strict=True)
     return {
         word: made(value, unit, random_part(random), _systematic_at(contour, name, value, node))

@@ -7,6 +7,7 @@ from functools import cached_property
 import numpy as np
 
 from fieldview.compute.area_sums import MeasuredArea, RunningSums
+from fieldview.compute.block_extremes import BlockExtremes
 from fieldview.compute.field import Field, Status
 from fieldview.compute.line_weights import KeysLine
 from fieldview.compute.local import Local
@@ -20,6 +21,7 @@ class Prepared:
     def __init__(self, field: Field):
         self.field = field
         self.grid = field.grid
+        self._extremes: dict[str, BlockExtremes] = {}
 
     @cached_property
     def velocity(self) -> np.ndarray:
@@ -103,9 +105,13 @@ class Prepared:
 
     # --- for the full set of numbers ---------------------------------------------------------------
 
-    def component(self, name: str) -> np.ndarray:
-        """u or v at every node: (ny * nx,)."""
-        return getattr(self.field, name).ravel()
+    def extremes(self, name: str) -> BlockExtremes:
+        """Of "u", "v", "speed", "vorticity" or "w"."""
+        if name not in self._extremes:
+            own = {"speed": "speed", "vorticity": "vorticity", "w": "through"}
+            values = getattr(self, own[name]) if name in own else getattr(self.field, name).ravel()
+            self._extremes[name] = BlockExtremes(values)
+        return self._extremes[name]
 
     @cached_property
     def speed(self) -> np.ndarray:

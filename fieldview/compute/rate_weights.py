@@ -15,7 +15,9 @@ _NOTHING = 1e-12
 """Share of the largest weight that counts as round-off: coordinates far from 0 leave some 1e-13 of it."""
 
 
-def rate_weights(area: np.ndarray, corner: tuple[int, int], prepared: Prepared) -> NodeWeights:
+def rate_weights(
+    area: np.ndarray, corner: tuple[int, int], prepared: Prepared, line_nodes: np.ndarray
+) -> NodeWeights:
     """Complex weights whose pair is (integral of vorticity, integral of divergence).
 
     vorticity + i divergence = i (d/dx + i d/dy) conj(U), with the field's own scheme. In the plane
@@ -28,6 +30,8 @@ def rate_weights(area: np.ndarray, corner: tuple[int, int], prepared: Prepared) 
     corner : (int, int)
         Row and column of the block's first node.
     prepared : Prepared
+    line_nodes : int ndarray (n,)
+        Flat nodes at the corners of the cells through which the contour runs.
     """
     place = prepared.grid.placement
     factors = {"x": 1j * place.factor, "y": (1 if place.mirrored else -1) * place.factor}
@@ -40,7 +44,10 @@ def rate_weights(area: np.ndarray, corner: tuple[int, int], prepared: Prepared) 
         rest = () if masked[along] is area else np.flatnonzero((np.abs(area) > _NOTHING * area.max()) & ~own)
         if len(rest):
             scattered.append(_of_rows(rest, area, corner, along, factors[along], prepared))
-    found = _transposed(masked, corner, prepared, reach)
+    if scattered or not _is_even(corner, area.shape, prepared):
+        found = _transposed(masked, corner, prepared, reach)
+    else:
+        found = [_beside_line(area, corner, prepared, reach, line_nodes)]
     at = np.concatenate([nodes for nodes, _, _ in found])
     values = np.concatenate([factors["x"] * of_x + factors["y"] * of_y for _, of_x, of_y in found])
     rows, columns = np.divmod(at, area.shape[1] + 2 * reach)
@@ -49,6 +56,35 @@ def rate_weights(area: np.ndarray, corner: tuple[int, int], prepared: Prepared) 
         return NodeWeights(nodes, values)
     found = [(nodes, values), *scattered]
     return NodeWeights.gathered(*(np.concatenate(part) for part in zip(*found, strict=True)))
+
+
+def _is_even(corner, shape, prepared: Prepared) -> bool:
+    """Whether every weight of the stencils is the same at all nodes of the block."""
+    blocks = (_block(weight, corner, shape) for weight in _weights_of(prepared))
+    return all(np.ptp(block) <= _NOTHING * np.abs(block).max() for block in blocks)
+
+
+def _beside_line(area, corner, prepared: Prepared, reach: int, line_nodes) -> tuple[np.ndarray, ...]:
+    """As `_transposed`, on an even grid: where a stencil meets no cell of the contour, it meets an area whose
+    weights are all the same or all zero, and its differences cancel."""
+    framed = np.pad(area, 2 * reach)
+    rows, columns = np.divmod(line_nodes, prepared.grid.shape[1])
+    near = np.zeros((area.shape[0] + 2 * reach, area.shape[1] + 2 * reach), bool)
+    rows, columns = rows - corner[0] + reach, columns - corner[1] + reach
+    for rule, _ in prepared.stencils.values():
+        for dy, dx in rule.offsets:
+            near[rows + dy, columns + dx] = True
+    nodes = np.flatnonzero(near)
+    start = nodes // near.shape[1] * framed.shape[1] + nodes % near.shape[1]
+    sums = []
+    for rule, _ in prepared.stencils.values():
+        total = np.zeros(nodes.size)
+        for (dy, dx), weight in zip(rule.offsets, rule.weights, strict=True):
+            constant = _block(weight, corner, area.shape).flat[0]
+            if constant != 0:
+                total += constant * framed.ravel()[start + (reach - dy) * framed.shape[1] + reach - dx]
+        sums.append(total)
+    return nodes, *sums
 
 
 def _transposed(masked, corner, prepared: Prepared, reach: int) -> list[tuple[np.ndarray, ...]]:

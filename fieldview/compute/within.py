@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from fieldview.compute.block_extremes import BLOCK, BlockExtremes
 from fieldview.compute.contour import Contour
 
 _ON_LINE = 1e-9
@@ -34,25 +35,45 @@ class Within:
         spans = [np.arange(start, stop) for start, stop in zip(self.starts, self.stops, strict=True)]
         return np.unique(np.concatenate([*spans, self.singles]))
 
-    def extreme(self, values: np.ndarray, rule: np.ufunc) -> int | None:
-        """Flat node of the least or greatest value; ``rule`` is np.minimum or np.maximum.
+    def extremes(self, values: BlockExtremes) -> list[int] | None:
+        """Flat nodes of the least and of the greatest value; None where there is no node."""
+        if not self.starts.size and not self.singles.size:
+            return None
+        return [
+            _furthest(values, side, self.starts, self.stops, self.singles)
+            for side in (values.lowest, values.highest)
+        ]
 
-        Parameters
-        ----------
-        values : ndarray (ny * nx,)
-        """
-        pick = np.argmin if rule is np.minimum else np.argmax
-        found = []
-        if self.starts.size:
-            ends = np.ravel(np.column_stack([self.starts, self.stops]))
-            # what lies between two spans is reduced too, and not looked at
-            held = rule.reduceat(values, ends[:-1] if ends[-1] == values.size else ends)[::2]
-            best = int(pick(held))
-            start, stop = self.starts[best], self.stops[best]
-            found.append(int(start + pick(values[start:stop])))
-        if self.singles.size:
-            found.append(int(self.singles[pick(values[self.singles])]))
-        return found[int(pick(values[found]))] if found else None
+
+def _furthest(values: BlockExtremes, side: np.ndarray, starts, stops, singles) -> int:
+    """Flat node whose value lies furthest to one side: that of the blocks' least or greatest values."""
+    sign = 1.0 if side is values.highest else -1.0
+    best, node = -np.inf, -1
+    if singles.size:
+        node = int(singles[np.argmax(sign * values.values[singles])])
+        best = sign * values.values[node]
+    first, last = -(-starts // BLOCK), stops // BLOCK
+    whole = first < last
+    if whole.any():
+        ends = np.ravel(np.column_stack([first[whole], last[whole]]))
+        rule = np.maximum if sign > 0 else np.minimum
+        # what lies between two spans is reduced too, and not looked at
+        held = rule.reduceat(side, ends[:-1] if ends[-1] == side.size else ends)[::2]
+        most = int(np.argmax(sign * held))
+        if sign * held[most] > best:
+            blocks = slice(first[whole][most] * BLOCK, last[whole][most] * BLOCK)
+            node = int(blocks.start + np.argmax(sign * values.values[blocks]))
+            best = sign * values.values[node]
+    # of the blocks cut by the ends of the spans only those that could hold more
+    cut = np.concatenate([starts // BLOCK, (stops - 1) // BLOCK])
+    for at in np.flatnonzero(sign * side[cut] > best):
+        span = at % starts.size
+        start = max(starts[span], cut[at] * BLOCK)
+        part = sign * values.values[start : min(stops[span], (cut[at] + 1) * BLOCK)]
+        most = int(np.argmax(part))
+        if part[most] > best:
+            best, node = part[most], int(start + most)
+    return node
 
 
 def within(contour: Contour) -> Within:

@@ -4,6 +4,7 @@ from itertools import pairwise
 
 import numpy as np
 import pytest
+import shapely
 
 from fieldview.compute import shapes
 from fieldview.compute.contour import Contour
@@ -78,6 +79,45 @@ def test_area_weights_give_the_running_sums_integral(scheme, place):
         break
     else:
         pytest.fail("no contour lies between the gaps")
+
+
+@pytest.mark.parametrize("scheme", ["central", "richardson", "least_squares", "circulation"])
+@pytest.mark.parametrize("place", PLACEMENTS)
+def test_on_an_even_grid_only_nodes_beside_the_contour_have_weight(scheme, place):
+    rng = np.random.default_rng(4)
+    grid = placed(Grid(np.arange(25.0) * 0.5, np.arange(27.0) * 0.5), place)
+    ready = prepare(random_field(grid, derivative=scheme))
+    node = middle(grid)  # so that corners and edges of the square lie on nodes
+    square = node + np.array([-1 - 1j, 1 - 1j, 1 + 1j, -1 + 1j])
+    corners = shapes.Polygon(tuple((float(z.real), float(z.imag)) for z in square))
+    for shape in (star(rng, node, 0.7 * reach(grid)), corners):
+        contour = Contour(shape, ready)
+        assert contour.rate_share == 1 and contour.rates.nodes.size < contour.area[0].size
+        expected = ready.rate_sums.integral(contour.rate_pieces)
+        found = ready.of_pair(contour.rates)
+        assert abs(found - expected) < 1e-12 * np.abs(contour.rates.values).sum()
+
+
+@pytest.mark.parametrize("seed", range(4))
+def test_extremes_are_those_of_the_nodes_within(seed):
+    """Against shapely's nodes, in blocks that are cut by the contour and blocks that are not."""
+    rng = np.random.default_rng(seed)
+    grid = lattice(40, 170)
+    missing = rng.random(grid.shape) < 0.1
+    missing[5:-5, 5:-5] = False
+    field = random_field(grid)
+    field = Field(grid, u=np.where(missing, np.nan, field.u), v=np.where(missing, np.nan, field.v))
+    x0, x1, y0, y1 = grid.x[6], grid.x[-7], grid.y[6], grid.y[-7]
+    arm = np.exp(2j * np.pi * np.sort(rng.random(9)))
+    z = middle(grid) + 0.5 * ((x1 - x0) * arm.real + 1j * (y1 - y0) * arm.imag)
+    shape = shapes.Polygon(tuple((float(p.real), float(p.imag)) for p in z))
+    inside = measure_region(field, shape).inside
+    outline = shapely.Polygon(np.column_stack([z.real, z.imag]))
+    held = shapely.contains_xy(outline, grid.nodes.real, grid.nodes.imag)
+    speed = np.hypot(field.u, field.v)
+    for name, values in (("u", field.u), ("v", field.v), ("speed", speed)):
+        assert inside[name]["min"].value == pytest.approx(values[held].min(), rel=1e-14)
+        assert inside[name]["max"].value == pytest.approx(values[held].max(), rel=1e-14)
 
 
 def test_measured_share_of_the_area_is_exact_with_gaps():
