@@ -94,7 +94,7 @@ class Contour:
         if not (0 <= iy < ny and 0 <= ix < nx and self.grid.is_plane):
             return "leaves the grid", "draw it no further than the outermost nodes"
         if (self.prepared.field.status[iy : iy + 2, ix : ix + 2] == Status.MASKED).any():
-            return "passes the mask", "draw it clear of the mask"
+            return "passes a gap left by the mask", "draw it clear of the mask"
         return "passes a gap", "draw it round the gap or fill the gap"
 
     # --- the line ----------------------------------------------------------------------------------

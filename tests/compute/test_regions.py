@@ -342,10 +342,10 @@ def test_an_obstacle_is_named_with_its_remedy():
     shape = shapes.rectangle(((1, 1), (5.5, 9)))
     absent = status > 0
     masked = measure_region(linear_field(grid, ((0, -1), (1, 0)), missing=absent, status=status), shape)
-    assert "passes the mask" in masked.warnings[0] and "clear of the mask" in masked.warnings[0]
+    assert "passes a gap left by the mask" in masked.warnings[0] and "clear of the mask" in masked.warnings[0]
     status[5, 5] = Status.MISSING
     missing = measure_region(linear_field(grid, ((0, -1), (1, 0)), missing=absent, status=status), shape)
-    assert "passes a gap" in missing.warnings[0] and "fill the gap" in missing.warnings[0]
+    assert "passes a gap at" in missing.warnings[0] and "fill the gap" in missing.warnings[0]
     outside = measure_region(linear_field(grid, ((0, -1), (1, 0))), shapes.circle((9, 5), 3))
     assert "outermost nodes" in outside.warnings[0]
 
