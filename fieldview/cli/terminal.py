@@ -31,7 +31,9 @@ SessionFile = Annotated[Path, typer.Argument(help="A session file, NAME.session.
 Frames = Annotated[
     str | None,
     typer.Option(
-        "--frames", help="Frames by number: 3, 0:100:5 or 0,4,8; mean, or fluctuation:3", metavar="WHICH"
+        "--frames",
+        help="Frames by number: 3, 0:100:5 or 0,4,8; mean, fluctuation:3, or phase:8 for averages by phase",
+        metavar="WHICH",
     ),
 ]
 

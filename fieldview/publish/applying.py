@@ -25,8 +25,9 @@ from fieldview.files.writing import write_whole
 from fieldview.publish.measuring import Progress
 from fieldview.publish.sharing import Share, bench_of, in_order
 from fieldview.publish.tables import csv_lines
+from fieldview.session.frames import Frame, left_out
 from fieldview.session.measure import chosen_frames, frame_row, unanswered
-from fieldview.session.replay import Frame, Workbench
+from fieldview.session.replay import Workbench
 from fieldview.session.store import dump_session, load_session
 
 FORMATS = ("csv", "nc", "npz")
@@ -204,7 +205,10 @@ class _Work:
             return why
         part = {
             "skipped": False,
-            "remarks": [f'frame {frame}: "{name}" has no value' for name in unanswered(row)],
+            "remarks": [
+                *(f"frame {frame}: {sentence}" for sentence in left_out(field.notes)),
+                *(f'frame {frame}: "{name}" has no value' for name in unanswered(row)),
+            ],
             "row": row,
             "ledger": [tally.counts for tally in tallies],
             "outcomes": [tally.outcome for tally in tallies],

@@ -13,6 +13,7 @@ from typing import IO
 from fieldview.compute.errors import InputError
 from fieldview.publish.sharing import Share, bench_of, in_order, portions
 from fieldview.publish.tables import csv_lines, text_lines
+from fieldview.session.frames import left_out
 from fieldview.session.measure import chosen_frames, measure_frames, unanswered
 from fieldview.session.replay import Workbench
 from fieldview.session.store import load_session
@@ -109,6 +110,8 @@ def _measured(job) -> list[tuple]:
 
 def _watched(rows: Iterable[dict], remark: Callable[[str], None]) -> Iterator[dict]:
     for row in rows:
+        for sentence in left_out(row["regions"][0]["warnings"]):
+            remark(f"frame {row['frame']}: {sentence}")
         for region in row["regions"]:
             if region["name"] in unanswered({"regions": [region]}):
                 why = region["warnings"][0] if region["warnings"] else "no reason is known"

@@ -19,6 +19,7 @@ def quantity(kind: str, default=..., *, help: str, **limits):
 
     ``kind`` says how it converts when the session's units change, and what unit a form shows:
     "point", "points" (positions), "length", "lengths" (x and y extents), "velocity", "velocities",
-    "component limits", "rate" (per time), "nodes", "frames", "angle" or "ratio".
+    "component limits", "rate" (per time), "frequency" (always per second), "nodes", "frames", "angle"
+    or "ratio".
     """
     return Field(default, description=help, json_schema_extra={"quantity": kind}, **limits)

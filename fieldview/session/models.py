@@ -83,6 +83,22 @@ class Reference(Entry):
     velocity: float | None = quantity("velocity", None, gt=0, help="Reference velocity")
 
 
+class PhaseSource(Entry):
+    """What the phase of a frame is, for averages by phase: a channel, or a frequency and the frame's time."""
+
+    channel: str | None = Field(None, description="Channel of the run that holds the phase")
+    unit: Literal["deg", "rad", "1"] = Field("deg", description="Unit of the channel; 1 is cycles")
+    frequency: float | None = quantity("frequency", None, gt=0, help="Of the cycle, phase 0 at time 0 [1/s]")
+    u_frequency: float | None = quantity("frequency", None, ge=0, help="Its standard uncertainty [1/s]")
+    width: float | None = quantity("ratio", None, gt=0, le=1, help="Of a bin in cycles; touching if left out")
+
+    @model_validator(mode="after")
+    def _one_of_both(self):
+        if (self.channel is None) == (self.frequency is None):
+            raise ValueError("give either channel or frequency, one of them")
+        return self
+
+
 class Session(Entry):
     """Everything the user decided, as one value. An edit makes a new one: ``session.model_copy``."""
 
@@ -103,6 +119,7 @@ class Session(Entry):
     ledger: tuple[AnyStep, ...] = Field((), description="Cleaning steps, in order")
     regions: tuple[Region, ...] = Field((), description="Contours and lines")
     reference: Reference = Field(default_factory=Reference)
+    phase: PhaseSource | None = Field(None, description="What the phase of a frame is, for phase averages")
     view: dict[str, Any] = Field(default_factory=dict, description="How the window shows it; no number")
 
     _folder: Path | None = PrivateAttr(None)
@@ -142,4 +159,13 @@ class Session(Entry):
         return self
 
 
-__all__ = ["FORMAT", "VERSION", "Reference", "RunSource", "Session", "SystematicParts", "Uncertainties"]
+__all__ = [
+    "FORMAT",
+    "VERSION",
+    "PhaseSource",
+    "Reference",
+    "RunSource",
+    "Session",
+    "SystematicParts",
+    "Uncertainties",
+]

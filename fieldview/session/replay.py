@@ -17,25 +17,25 @@ from fieldview.compute.field import Event, Field, Status
 from fieldview.compute.noise import estimate_sigma
 from fieldview.compute.units import Units
 from fieldview.files import Run, open_run
+from fieldview.session.frames import MEAN, Frame, WholeRun, parse_frames
 from fieldview.session.ledger import Tally, apply_line, sentence, switched_off
-from fieldview.session.mean import mean_of
 from fieldview.session.models import Session
-from fieldview.session.statistics import fluctuation
+from fieldview.session.phase import PhaseRule
 from fieldview.session.steps import Calibrate, TimeTest, TurnAxes
 from fieldview.session.wording import figure
 
-MEAN = "mean"
-FLUCTUATION = "fluctuation:"
 NOISE_FRAMES = 8
 """Frames looked at where the noise level is estimated from the run, spread evenly over it."""
 
-Frame = int | str
+KEPT_OF_THE_RUN = 8
+"""Results that rest on the whole run and are kept: its mean, its noise level, its phase averages."""
 
 
 def evaluate(session: Session, frame: Frame = 0, *, upto: int | None = None) -> Field:
     """One frame after the ledger, or after its first ``upto`` lines.
 
-    Frame "mean" is the run's mean, "fluctuation:3" is frame 3 less it.
+    Frame "mean" is the run's mean, "fluctuation:3" is frame 3 less it, "phase:8:0" the first of eight phase
+    averages.
 
     Raises InputError where the run or the session cannot be used.
     """
@@ -53,15 +53,23 @@ class Workbench:
         memory does not grow with the number of frames.
     """
 
-    def __init__(self, session: Session, *, cache_bytes: int = 0, run: Run | None = None, shelf=None):
+    def __init__(
+        self,
+        session: Session,
+        *,
+        cache_bytes: int = 0,
+        run: Run | None = None,
+        before: Workbench | None = None,
+    ):
         self.session = session
         self._run = run
-        self._shelf = shelf or _Shelf(cache_bytes)
+        self._shelf = before._shelf if before else _Shelf(cache_bytes)
+        self._of_run = before._of_run if before else _Shelf(0)
 
     def updated(self, session: Session) -> Workbench:
         """The workbench of an edited session; what the edit left alone is not read or computed again."""
         same_run = _run_key(session) == _run_key(self.session)
-        return Workbench(session, run=self._run if same_run else None, shelf=self._shelf)
+        return Workbench(session, run=self._run if same_run else None, before=self)
 
     @property
     def run(self) -> Run:
@@ -79,28 +87,44 @@ class Workbench:
         return Units() if calibrated else self.run.units
 
     def frames(self, spec: str | None = None) -> list[Frame]:
-        """Frames for a text like ``0:100:5``, ``3``, ``0,4,8``, ``mean`` or ``fluctuation:3``; all for None.
-
-        Raises InputError for any other text and for frames the run does not have.
-        """
+        """Frames chosen by a text; see `fieldview.session.frames.parse_frames`."""
         return parse_frames(spec, len(self.run))
 
     def field(self, frame: Frame = 0, *, upto: int | None = None) -> Field:
         """One frame after the ledger, or after its first ``upto`` lines."""
         count = len(self.session.ledger) if upto is None else min(upto, len(self.session.ledger))
         if isinstance(frame, str):
-            return self._of_the_run(frame, count)
+            return self._whole_run(count).made(parse_frames(frame, len(self.run))[0])
         if not 0 <= int(frame) < len(self.run):
             raise InputError(f"frame {frame} does not exist; the run has frames 0 to {len(self.run) - 1}")
         return self._state(int(frame), count)[0].with_(derivative=self.session.derivative)
 
-    def _of_the_run(self, frame: str, count: int) -> Field:
-        """The run's mean, or a frame less that mean."""
-        mean = mean_of(self.field(number, upto=count) for number in range(len(self.run)))
-        if frame == MEAN:
-            return mean
-        number = int(frame.removeprefix(FLUCTUATION))
-        return fluctuation(self.field(number, upto=count), mean, len(self.run))
+    def _whole_run(self, count: int) -> WholeRun:
+        """What frames of the whole run are made from, after so many lines."""
+        key = self._keys[count] + self.session.derivative + str(self.session.phase)
+
+        def keep(name, make):
+            return self.of_the_run((name, key), make)
+
+        return WholeRun(len(self.run), lambda number: self.field(number, upto=count), self.phase_rule, keep)
+
+    def phase_rule(self, bins: int) -> PhaseRule:
+        """How the session's frames are averaged by phase in so many bins."""
+        stated = self.session.phase
+        if stated is None:
+            raise InputError(
+                "the session does not say what the phase of a frame is; "
+                'add "phase": {"frequency": 2.0} [1/s] or "phase": {"channel": NAME} to it'
+            )
+        return PhaseRule(bins, **stated.model_dump())
+
+    def of_the_run(self, key, make):
+        """A result that rests on the whole run: kept from before, or made now."""
+        found = self._of_run.get(key)
+        if found is None:
+            found = make()
+            self._of_run.put(key, found, needed=KEPT_OF_THE_RUN)
+        return found
 
     def tallies(self, frame: int) -> list[Tally]:
         """What every ledger line did to one frame."""
@@ -231,13 +255,12 @@ class Workbench:
     def _noise(self, nodes: tuple[float, float]) -> dict[str, float]:
         """Noise per component estimated from frames spread over the run, in the plane's axes."""
         key = ("noise", self._keys[0] + str([s.model_dump_json() for s in self._axes_steps()]) + str(nodes))
-        level = self._shelf.get(key)
-        if level is None:
-            count = len(self.run)
-            chosen = np.unique(np.linspace(0, count - 1, min(count, NOISE_FRAMES)).round().astype(int))
-            level = estimate_sigma([self._placed(int(frame)) for frame in chosen], correlation=nodes)
-            self._shelf.put(key, level, needed=1)
-        return level
+        return self.of_the_run(key, lambda: self._estimated(nodes))
+
+    def _estimated(self, nodes: tuple[float, float]) -> dict[str, float]:
+        count = len(self.run)
+        chosen = np.unique(np.linspace(0, count - 1, min(count, NOISE_FRAMES)).round().astype(int))
+        return estimate_sigma([self._placed(int(frame)) for frame in chosen], correlation=nodes)
 
     def _axes_steps(self):
         return self.session.ledger[: self._axes_lines]
@@ -270,19 +293,17 @@ class _Around:
 
     def run_mean(self) -> complex:
         bench = self._workbench
-        key = ("run mean", bench._keys[self._line])
-        mean = bench._shelf.get(key)
-        if mean is None:
-            total, number = 0j, 0
-            for frame in range(len(bench.run)):
-                field = bench._state(frame, self._line)[0]
-                measured = field.status == Status.MEASURED
-                parts = [np.zeros(1) if p is None else p[measured] for p in (field.u, field.v)]
-                total += complex(parts[0].sum(), parts[1].sum())
-                number += int(measured.sum())
-            mean = total / max(number, 1)
-            bench._shelf.put(key, mean, needed=1)
-        return mean
+        return bench.of_the_run(("mean velocity", bench._keys[self._line]), self._mean_velocity)
+
+    def _mean_velocity(self) -> complex:
+        bench, total, number = self._workbench, 0j, 0
+        for frame in range(len(bench.run)):
+            field = bench._state(frame, self._line)[0]
+            measured = field.status == Status.MEASURED
+            parts = [np.zeros(1) if p is None else p[measured] for p in (field.u, field.v)]
+            total += complex(parts[0].sum(), parts[1].sum())
+            number += int(measured.sum())
+        return total / max(number, 1)
 
     def noise(self) -> dict[str, float]:
         bench = self._workbench
@@ -320,38 +341,6 @@ class _Shelf:
             kept = max(needed, 1)
             while self._size > self._limit and len(self._entries) > kept:
                 self._size -= self._entries.popitem(last=False)[1][1]
-
-
-def parse_frames(spec: str | None, count: int) -> list[Frame]:
-    """Frame numbers chosen by a text, see `Workbench.frames`."""
-    if spec is None:
-        return list(range(count))
-    if spec.strip() == MEAN:
-        return [MEAN]
-    if spec.strip().startswith(FLUCTUATION):
-        (number,) = parse_frames(spec.strip().removeprefix(FLUCTUATION), count)[:1]
-        return [f"{FLUCTUATION}{number}"]
-    chosen: list[Frame] = []
-    for part in spec.split(","):
-        try:
-            bounds = [int(text) if text.strip() else None for text in part.split(":")]
-        except ValueError:
-            bounds = []
-        if not 1 <= len(bounds) <= 3 or bounds == [None] or (len(bounds) == 3 and bounds[2] == 0):
-            raise InputError(
-                f'frames "{spec}": write a number, start:stop:step, a list with commas, mean '
-                "or fluctuation:NUMBER"
-            )
-        if len(bounds) == 1:
-            chosen.append(bounds[0])
-        else:
-            # Only what the run has: 0:100 on a run of 48 frames is the run
-            chosen.extend(range(count)[slice(*bounds)])
-    wrong = [frame for frame in chosen if not 0 <= frame < count]
-    if wrong or not chosen:
-        which = f"frame {wrong[0]}" if wrong else f'frames "{spec}"'
-        raise InputError(f"{which}: the run has {count} frames, 0 to {count - 1}")
-    return chosen
 
 
 def history(field: Field, iy: int, ix: int) -> list[str]:
@@ -396,4 +385,4 @@ def _bytes(value) -> int:
     )
 
 
-__all__ = ["MEAN", "Workbench", "evaluate", "history", "parse_frames", "sentence"]
+__all__ = ["MEAN", "Frame", "Workbench", "evaluate", "history", "parse_frames", "sentence"]

@@ -143,13 +143,32 @@ def test_changed_sources_are_said(session, tmp_path):
 @pytest.mark.parametrize(
     ("spec", "frames"),
     [(None, list(range(10))), ("3", [3]), ("0:100:5", [0, 5]), ("7:", [7, 8, 9]), ("1,4,2", [1, 4, 2]),
-     ("-3:", [7, 8, 9]), ("mean", ["mean"]), ("fluctuation:3", ["fluctuation:3"])],
+     ("-3:", [7, 8, 9]), ("mean", ["mean"]), ("fluctuation:3", ["fluctuation:3"]),
+     ("fluctuation:0:2", ["fluctuation:0", "fluctuation:1"]), ("phase:2", ["phase:2:0", "phase:2:1"]),
+     ("phase:8:5", ["phase:8:5"])],
 )  # fmt: skip
 def test_frames_are_chosen_by_a_text(spec, frames):
     assert parse_frames(spec, 10) == frames
 
 
-@pytest.mark.parametrize("spec", ["", "a", "1:2:3:4", "1::0", "10", "20:30", "1,,2", "1.5"])
+@pytest.mark.parametrize(
+    "spec",
+    [
+        "",
+        "a",
+        "1:2:3:4",
+        "1::0",
+        "10",
+        "20:30",
+        "1,,2",
+        "1.5",
+        "phase:0",
+        "phase:4:4",
+        "phase:",
+        "fluctuation:",
+        "fluctuation:12",
+    ],
+)
 def test_other_texts_are_refused(spec):
     with pytest.raises(InputError, match="frame"):
         parse_frames(spec, 10)

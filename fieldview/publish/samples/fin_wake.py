@@ -153,4 +153,5 @@ def _session() -> dict:
             {"name": "wake cut", "shape": "line", "points": [[0.195, 0.048], [0.195, -0.048]]},
         ],
         "reference": {"length": CHORD, "velocity": STREAM},
+        "phase": {"frequency": FREQUENCY, "u_frequency": 0.002},
     }  # fmt: skip
