@@ -21,6 +21,7 @@ from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field, Status
 from fieldview.compute.quantities import QUANTITIES, quantity_map
 from fieldview.files import UnreadableFrame
+from fieldview.files.writers import ENDINGS, writer
 from fieldview.files.writing import write_whole
 from fieldview.publish.measuring import Progress
 from fieldview.publish.sharing import Share, bench_of, in_order
@@ -30,7 +31,6 @@ from fieldview.session.measure import chosen_frames, frame_row, unanswered
 from fieldview.session.replay import Workbench
 from fieldview.session.store import dump_session, load_session
 
-FORMATS = ("csv", "nc", "npz")
 _UNFINISHED = ".unfinished"
 
 
@@ -57,8 +57,8 @@ def apply_session(
     Raises InputError where the session, the run, the frames or the folder cannot be used; nothing is written
     then.
     """
-    if to not in FORMATS:
-        raise InputError(f"--to {to} is not known; use {', '.join(FORMATS)}")
+    if to not in ENDINGS:
+        raise InputError(f"--to {to} is not known; use {', '.join(ENDINGS)}")
     for name in quantities:
         if name not in QUANTITIES:
             raise InputError(f'there is no quantity "{name}"; there are {", ".join(QUANTITIES)}')
@@ -219,8 +219,7 @@ class _Work:
         attributes = {"session": self.path.name, "session_digest": _digest(dump_session(self.bench.session))}
         if self.bench.session.title:
             attributes["title"] = self.bench.session.title
-        writer = _writer(self.to)
-        writer(
+        writer(self.to)(
             self.folder / self.field_name(frame),
             field,
             quantities=_values(field, self.quantities),
@@ -308,12 +307,6 @@ def _values(field: Field, names: Sequence[str]) -> dict:
         if made.uncertainty is not None:
             values[f"{name}_uncertainty"] = (made.uncertainty, made.unit)
     return values
-
-
-def _writer(to: str):
-    from fieldview.files import delimited, netcdf, npz
-
-    return {"csv": delimited.write_csv, "nc": netcdf.write_netcdf, "npz": npz.write_npz}[to]
 
 
 def _text(path: Path) -> str | None:

@@ -13,6 +13,7 @@ from pathlib import Path
 from fieldview.compute.errors import InputError
 from fieldview.compute.lag_window import LAGS
 from fieldview.publish import wording
+from fieldview.publish.maps import Values, check_ending, write_maps
 from fieldview.publish.measuring import Progress
 from fieldview.publish.sharing import Share, bench_of, in_order
 from fieldview.session.check import run_check
@@ -26,7 +27,7 @@ FORMATS = ("table", "csv", "json")
 def check_report(path: Path, frames: str | None, format: str, *, progress: Progress, say) -> tuple[str, bool]:
     """The run check of a session as text, and whether there was anything to remark about the sources."""
     bench = Workbench(load_session(path))
-    remarks = _changed(bench, say)
+    remarks = said_changes(bench, say)
     numbers = frame_numbers(bench, frames)
     ticks = iter(progress(numbers, "checking", len(numbers)))
     next(ticks, None)
@@ -40,7 +41,7 @@ def check_report(path: Path, frames: str | None, format: str, *, progress: Progr
         told = {"session": path.name, "findings": found.rows(), "frames": found.frame_rows()}
         return json.dumps(told, indent=1, ensure_ascii=False, allow_nan=False) + "\n", bool(remarks)
     if format == "csv":
-        return _csv(_flat(row) for row in found.frame_rows()), bool(remarks)
+        return csv_text(flat(row) for row in found.frame_rows()), bool(remarks)
     return "\n".join(_findings(found.rows())) + "\n", bool(remarks)
 
 
@@ -68,8 +69,9 @@ def statistics_report(
 
     With ``maps`` the mean field is written to that file too, every statistic and its uncertainty beside it.
     """
+    check_ending(maps)
     bench = Workbench(load_session(path))
-    remarks = _changed(bench, say)
+    remarks = said_changes(bench, say)
     numbers = frame_numbers(bench, frames)
     run = RunStatistics(filled=filled)
     jobs = [(Share.of(bench.session), tuple(part), filled) for part in stretches(numbers)]
@@ -82,12 +84,12 @@ def statistics_report(
         raise InputError(remarks[-1] if remarks else f"{path}: the run has no frames")
     rows = run.rows(subtract_noise=subtract_noise, points=points)
     if maps is not None:
-        _write_maps(maps, run, path, subtract_noise)
+        write_maps(maps, run.mean, _map_values(run, subtract_noise), session=path)
     if format == "json":
         told = {"session": path.name, "frames": run.frames, "statistics": rows, "remarks": run.remarks()}
         return json.dumps(told, indent=1, ensure_ascii=False, allow_nan=False) + "\n", bool(remarks)
     if format == "csv":
-        return _csv(_flat(row) for row in rows), bool(remarks)
+        return csv_text(flat(row) for row in rows), bool(remarks)
     return "\n".join(_statistics(rows, run)) + "\n", bool(remarks)
 
 
@@ -127,33 +129,25 @@ def _number(value: float | None, spread: float | None, unit: str) -> str:
     return f"{wording.short(value, digits=4)} {wording.unit_text(unit)}".rstrip()
 
 
-def _write_maps(path: Path, run: RunStatistics, session: Path, subtract_noise: bool) -> None:
-    from fieldview.files import delimited, netcdf, npz
-
-    writers = {".csv": delimited.write_csv, ".nc": netcdf.write_netcdf, ".npz": npz.write_npz}
-    if path.suffix not in writers:
-        raise InputError(f"{path}: the ending must be .csv, .nc or .npz")
-    mean = run.mean
-    values = {}
+def _map_values(run: RunStatistics, subtract_noise: bool) -> Values:
+    units, values = run.mean.units, {}
     for name, entry in run.maps(subtract_noise=subtract_noise).items():
-        unit = entry.unit(mean.units)
+        unit = entry.unit(units)
         values[name] = (entry.values, unit)
         if entry.uncertainty is not None:
             values[f"{name}_uncertainty"] = (entry.uncertainty, unit)
-    try:
-        writers[path.suffix](path, mean, quantities=values, attributes={"session": session.name})
-    except OSError as error:
-        raise InputError(f"{path}: cannot be written ({error.strerror}); choose another place") from None
+    return values
 
 
-def _changed(bench: Workbench, say) -> list[str]:
+def said_changes(bench: Workbench, say) -> list[str]:
+    """The sources that have changed since the session was saved, said and returned."""
     found = bench.changed_sources()
     for sentence in found:
         say(sentence)
     return found
 
 
-def _flat(row: dict) -> dict:
+def flat(row: dict) -> dict:
     """A row without nested parts, which a table cannot hold."""
     flat = {}
     for key, value in row.items():
@@ -164,7 +158,8 @@ def _flat(row: dict) -> dict:
     return flat
 
 
-def _csv(rows: Iterable[dict]) -> str:
+def csv_text(rows: Iterable[dict]) -> str:
+    """Rows of the same keys as text with a header line."""
     out, writer = io.StringIO(), None
     for row in rows:
         if writer is None:

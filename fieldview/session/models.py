@@ -81,6 +81,9 @@ class Reference(Entry):
 
     length: float | None = quantity("length", None, gt=0, help="Reference length")
     velocity: float | None = quantity("velocity", None, gt=0, help="Reference velocity")
+    length_name: str | None = Field(None, min_length=1, description="What the length is, such as chord")
+    u_length: float | None = quantity("length", None, ge=0, help="Standard uncertainty of the length")
+    u_velocity: float | None = quantity("velocity", None, ge=0, help="Standard uncertainty of the velocity")
 
 
 class PhaseSource(Entry):

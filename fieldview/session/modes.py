@@ -13,6 +13,7 @@ from fieldview.compute.field import Field, Status
 from fieldview.compute.grid import Grid
 from fieldview.compute.modes import Modes, decompose
 from fieldview.compute.two_point import IntegralLength, TwoPoint, integral_length
+from fieldview.files import UnreadableFrame
 from fieldview.session.statistics import frame_numbers
 from fieldview.session.wording import figure
 
@@ -32,12 +33,20 @@ class RunModes:
         NaN where not known. [s]
     first : Field
         The first frame, for grid, units and error model.
+    unread : tuple of str
+        A sentence for every frame that could not be read and takes no part.
     """
 
     modes: Modes
     frames: np.ndarray
     times: np.ndarray
     first: Field
+    unread: tuple[str, ...] = ()
+
+    def mean_field(self) -> Field:
+        """The mean that the modes are about, as a frame."""
+        parts = dict(zip(self.modes.names, self.modes.mean, strict=True))
+        return self._made(parts, None, f"mean of {len(self.frames)} frames, gaps filled by modes")
 
     def mode_field(self, number: int) -> Field:
         """One mode, counted from 1, as a frame: its values as large as its root mean square in the run."""
@@ -85,7 +94,8 @@ class RunModes:
 
     def remarks(self) -> list[str]:
         found = self.modes
-        said = ["uncertainties of energies take the frames as independent: a lower bound where they are not"]
+        independent = "uncertainties of energies take the frames as independent: a lower bound otherwise"
+        said = [*self.unread, independent]
         if found.gap_share:
             share = figure(100 * found.gap_share, 3)
             said.append(f"{share} % of the vectors were missing and filled with {found.gap_modes} modes")
@@ -135,8 +145,17 @@ def run_modes(
     """
     numbers = frame_numbers(bench, frames)
     first, stacks, times = None, {}, np.full(len(numbers), np.nan)
-    for place, number in enumerate(numbers):
-        field = bench.field(number)
+    used, unread = [], []
+    for number in numbers:
+        place = len(used)
+        try:
+            field = bench.field(number)
+        except UnreadableFrame as error:
+            unread.append(f"frame {number} was skipped: {error}")
+            if len(unread) == len(numbers):
+                raise
+            continue
+        used.append(number)
         if first is None:
             first = field
             size = len(numbers) * field.status.size * len(field.components) * 8
@@ -155,8 +174,9 @@ def run_modes(
             on_frame(number)
     if first is None:
         raise InputError("the run has no frames to find modes of")
+    stacks = {name: stack[: len(used)] for name, stack in stacks.items()}
     modes = decompose(stacks, count=count, weights=node_areas(first.grid), gap_modes=gap_modes)
-    return RunModes(modes, np.array(numbers), times, first)
+    return RunModes(modes, np.array(used), times[: len(used)], first, tuple(unread))
 
 
 def node_areas(grid: Grid) -> np.ndarray:

@@ -7,6 +7,7 @@ once per cycle that smears away, is said for every bin.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 from dataclasses import field as attribute
@@ -22,6 +23,9 @@ CYCLE = {"deg": 360.0, "rad": 2 * np.pi, "1": 1.0}
 """A whole cycle in the units a phase channel may have."""
 
 _LAGS = 4
+_ON_EDGE = 1e-9
+"""Share of a bin within which a phase counts as on its edge."""
+
 _ONE_PHASE = 0.01
 """Largest spread of the phase channel over the nodes of one frame. [cycles]"""
 
@@ -94,9 +98,11 @@ class PhaseRule:
 
     def bin_of(self, phase: float) -> tuple[int, float] | None:
         """Number of the bin that holds a phase and the distance from its centre [cycles], or None."""
-        number = round(phase * self.bins)
+        # a frame on the edge of two bins goes to the one above, whatever rounding did to its phase
+        number = math.floor(phase * self.bins + 0.5 + _ON_EDGE)
         offset = phase - number / self.bins
-        inside = -0.5 * self.bin_width <= offset < 0.5 * self.bin_width
+        edge = _ON_EDGE / self.bins
+        inside = -0.5 * self.bin_width - edge <= offset < 0.5 * self.bin_width - edge
         # touching bins share their edges' rounding; nothing may fall between them
         return (number % self.bins, offset) if inside or self.width is None else None
 

@@ -14,6 +14,7 @@ from fieldview.compute.quantities import QUANTITIES, quantity
 from fieldview.compute.region import measure_region
 from fieldview.compute.spectrum import FEWEST_SAMPLES, Spectrum, spectrum
 from fieldview.compute.time_series import Convergence, autocorrelation, convergence
+from fieldview.files import UnreadableFrame
 from fieldview.session.clock import Clock
 from fieldview.session.measure import NUMBERS, number_row
 from fieldview.session.statistics import frame_numbers
@@ -37,6 +38,8 @@ class Trace:
     interval : float or None
         Between frames; None where the times are unknown or uneven. [s]
     remarks : tuple of str
+    unread : tuple of str
+        A sentence for every frame that could not be read, which has no value then.
     """
 
     label: str
@@ -47,6 +50,7 @@ class Trace:
     uncertainties: np.ndarray | None
     interval: float | None
     remarks: tuple[str, ...] = ()
+    unread: tuple[str, ...] = ()
 
     @property
     def missing(self) -> int:
@@ -132,26 +136,34 @@ def region_trace(
 
 def _trace(bench, frames, value, label, unit, on_frame) -> Trace:
     numbers = frame_numbers(bench, frames)
-    clock, times, values, spreads = Clock(), [], [], []
-    for frame in numbers:
-        field = bench.field(frame)
-        clock.add(field.time)
-        times.append(np.nan if field.time is None else field.time)
-        found, spread = value(field)
-        values.append(np.nan if found is None else found)
-        spreads.append(np.nan if spread is None else spread)
+    clock, unread = Clock(), []
+    times, values, spreads = (np.full(len(numbers), np.nan) for _ in range(3))
+    for place, frame in enumerate(numbers):
+        try:
+            field = bench.field(frame)
+        except UnreadableFrame as error:
+            unread.append(f"frame {frame} was skipped: {error}")
+            if len(unread) == len(numbers):
+                raise
+            clock.skip()
+        else:
+            clock.add(field.time)
+            times[place] = np.nan if field.time is None else field.time
+            found, spread = value(field)
+            values[place] = np.nan if found is None else found
+            spreads[place] = np.nan if spread is None else spread
         if on_frame is not None:
             on_frame(frame)
-    spreads = np.array(spreads, float)
     return Trace(
         label,
         unit,
         np.array(numbers),
-        np.array(times, float),
-        np.array(values, float),
+        times,
+        values,
         spreads if np.isfinite(spreads).any() else None,
         clock.interval,
         tuple(clock.remarks()),
+        tuple(unread),
     )
 
 
@@ -203,7 +215,7 @@ def trace_row(
         "frames": int(trace.values.size),
         "missing": trace.missing,
         "interval": trace.interval,
-        "remarks": list(trace.remarks),
+        "remarks": [*trace.remarks, *trace.unread],
     }
     if there.size < FEWEST_SAMPLES or np.ptp(there) == 0:
         why = f"only {there.size} values" if there.size < FEWEST_SAMPLES else "it never changes"
@@ -239,6 +251,21 @@ def trace_row(
         unknown = [part.name for part in number.budget if part.uncertainty is None]
         row["strouhal"] = number_row(number) | {"length_name": length_name, "not_stated": unknown}
     return row
+
+
+def strouhal_options(bench, trace: Trace) -> dict:
+    """What `trace_row` needs for a Strouhal number on the session's reference length and velocity, if any."""
+    stated = bench.session.reference
+    known = trace.interval is not None and str(bench.units) == "m, s"
+    if stated.length is None or stated.velocity is None or not known:
+        return {}
+    return {
+        "length": stated.length,
+        "length_name": stated.length_name or "reference length",
+        "velocity": stated.velocity,
+        "u_length": stated.u_length,
+        "u_velocity": stated.u_velocity,
+    }
 
 
 def _with(value, unit: str, uncertainty) -> dict:

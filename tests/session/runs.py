@@ -43,6 +43,29 @@ def vortex_frames(folder: Path, count: int = 1, *, seed: int = 0, sigma: float =
     return Session(run=RunSource(files=("f*.csv",))).in_folder(folder)
 
 
+CIRCLE = {"name": "core", "shape": "circle", "centre": list(CENTRE), "radius": 0.008}
+PHASES, FREQUENCY = 8, 2.0
+
+
+def pulsing_frames(folder: Path, cycles: int = 4) -> Session:
+    """A vortex whose strength goes up and down by half twice a second, seen eight times a cycle."""
+    rng = np.random.default_rng(1)
+    xx, yy = np.meshgrid(X, Y)
+    for number in range(cycles * PHASES):
+        strength = 1 + 0.5 * np.cos(2 * np.pi * number / PHASES)
+        u, v = (strength * part + rng.normal(0, SIGMA, part.shape) for part in vortex(xx, yy))
+        crank = np.full(u.shape, 360.0 * number / PHASES)
+        write_frame(folder / f"f{number}.csv", u, v, **{"crank [deg]": crank})
+    run = {"files": ["f*.csv"], "reading": {"frame_interval": 1 / (PHASES * FREQUENCY)}}
+    model = {"sigma": SIGMA, "correlation_nodes": 1, "window": 0}
+    return edited(
+        Session(run=RunSource(files=("f*.csv",))).in_folder(folder),
+        run=run,
+        regions=[CIRCLE],
+        error_model=model,
+    )
+
+
 def edited(session: Session, **parts) -> Session:
     """The session with some of its keys changed, checked as if read from a file."""
     document = session.model_dump(mode="json", exclude_none=True) | parts

@@ -6,31 +6,13 @@ import pytest
 from fieldview.compute.errors import InputError
 from fieldview.session.frames import LEFT_OUT
 from fieldview.session.measure import measure
-from fieldview.session.models import RunSource, Session
 from fieldview.session.replay import Workbench, evaluate
-from tests.session.runs import SIGMA, X, Y, edited, vortex, vortex_frames, write_frame
-
-CIRCLE = {"name": "core", "shape": "circle", "centre": [0.02, 0.016], "radius": 0.008}
-PHASES, INTERVAL = 8, 0.0625  # of a cycle of 2 Hz
+from tests.session.runs import CIRCLE, PHASES, edited, pulsing_frames, vortex_frames
 
 
 @pytest.fixture
 def pulsing(tmp_path):
-    """A vortex whose strength goes up and down twice a second, seen eight times a cycle."""
-    rng = np.random.default_rng(1)
-    xx, yy = np.meshgrid(X, Y)
-    for number in range(4 * PHASES):
-        strength = 1 + 0.5 * np.cos(2 * np.pi * number / PHASES)
-        u, v = (strength * part + rng.normal(0, SIGMA, part.shape) for part in vortex(xx, yy))
-        crank = np.full(u.shape, 360.0 * number / PHASES)
-        write_frame(tmp_path / f"f{number}.csv", u, v, **{"crank [deg]": crank})
-    session = Session(run=RunSource(files=("f*.csv",))).in_folder(tmp_path)
-    return edited(
-        session,
-        run={"files": ["f*.csv"], "reading": {"frame_interval": INTERVAL}},
-        regions=[CIRCLE],
-        error_model={"sigma": SIGMA, "correlation_nodes": 1, "window": 0},
-    )
+    return pulsing_frames(tmp_path)
 
 
 @pytest.mark.parametrize("source", [{"frequency": 2.0, "u_frequency": 0.001}, {"channel": "crank"}])

@@ -152,6 +152,9 @@ def _session() -> dict:
             {"name": "one pair", "shape": "rectangle", "corners": [[0.070, -0.045], [0.185, 0.045]]},
             {"name": "wake cut", "shape": "line", "points": [[0.195, 0.048], [0.195, -0.048]]},
         ],
-        "reference": {"length": CHORD, "velocity": STREAM},
+        "reference": {
+            "length": CHORD, "length_name": "chord", "u_length": 0.0001,
+            "velocity": STREAM, "u_velocity": 0.002,
+        },
         "phase": {"frequency": FREQUENCY, "u_frequency": 0.002},
     }  # fmt: skip

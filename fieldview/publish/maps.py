@@ -1,0 +1,29 @@
+"""Maps over the nodes, written beside a field in a file whose ending says the format."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import numpy as np
+
+from fieldview.compute.errors import InputError
+from fieldview.compute.field import Field
+from fieldview.files.writers import ENDINGS, writer
+
+Values = dict[str, tuple[np.ndarray, str]]
+"""Values (ny, nx) and unit by name."""
+
+
+def check_ending(path: Path | None) -> None:
+    """Refuse a file of no known format before the work begins."""
+    if path is not None and path.suffix[1:] not in ENDINGS:
+        raise InputError(f"{path}: the ending must be one of {', '.join(f'.{ending}' for ending in ENDINGS)}")
+
+
+def write_maps(path: Path, field: Field, values: Values, *, session: Path) -> None:
+    """Raises InputError where the file cannot be written."""
+    check_ending(path)
+    try:
+        writer(path.suffix[1:])(path, field, quantities=values, attributes={"session": session.name})
+    except OSError as error:
+        raise InputError(f"{path}: cannot be written ({error.strerror}); choose another place") from None
