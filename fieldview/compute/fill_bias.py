@@ -8,6 +8,7 @@ surroundings nearby, where the truth is known to within noise.
 from __future__ import annotations
 
 from collections.abc import Iterator
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -18,6 +19,9 @@ from fieldview.compute.pair_variance import pair_variance, through_variance
 
 _PLACES = 16
 """Places looked at for each gap, the nearest ones."""
+
+_TRIED_FIRST = 80
+"""Shifts tried before the far ones, which are seldom needed."""
 
 _FEWEST = 3
 """Places that must be found for each gap, else nothing is said."""
@@ -67,6 +71,26 @@ def fill_uncertainty(weights: NodeWeights, field: Field) -> complex | float | No
     return complex(*spread) if pair else float(spread[0])
 
 
+@dataclass(frozen=True, eq=False)
+class _Punched:
+    """One gap at all places it was punched into.
+
+    Attributes
+    ----------
+    nodes, values : ndarray (n,)
+        Weights of its error, filled less measured, at all places one after the other.
+    errors : ndarray (k,)
+        Its error at every place.
+    nearest : NodeWeights
+        The weights at the first place.
+    """
+
+    nodes: np.ndarray
+    values: np.ndarray
+    errors: np.ndarray
+    nearest: NodeWeights
+
+
 def _of_map(weights: NodeWeights, change: FillMap, field: Field) -> np.ndarray | None:
     """Variances (2,) from the gaps of one filling."""
     weights = weights.without_zeros()
@@ -77,24 +101,21 @@ def _of_map(weights: NodeWeights, change: FillMap, field: Field) -> np.ndarray |
     gaps = list(_gaps(filled, field.grid.shape[1]))
     chosen = gaps[:: -(-len(gaps) // _MOST_GAPS)]
     if all(field.grid.is_uniform) and change.method != "local_median":
-        punched = [_moved(gap, change, field) for gap in chosen]
+        punched = _moved(chosen, change, field)
     else:
         punched = _filled_again(chosen, change, field)
-    if min(map(len, punched)) < _FEWEST:
+    if punched is None:
         return None
     scale = len(gaps) / len(chosen)
-    scatter, means, total = np.zeros(2), [], 0.0
-    for weights_by_place in punched:
-        count = len(weights_by_place)
-        errors = np.array([_error(part, field) for part in weights_by_place])
-        total += errors.mean()
-        off = _parts(errors - errors.mean())
-        noise = _noise(weights_by_place[0], field)
-        scatter += np.maximum((off**2).sum(axis=1) / (count - 1) - noise, 0.0)
-        means.extend(part.times(1 / count) for part in weights_by_place)
-    nodes = np.concatenate([part.nodes for part in means])
-    together = NodeWeights.gathered(nodes, np.concatenate([part.values for part in means]))
-    common = _parts(np.array([total]))[:, 0] ** 2 - _noise(together, field)
+    scatter, total = np.zeros(2), 0.0
+    for gap in punched:
+        total += gap.errors.mean()
+        off = _parts(gap.errors - gap.errors.mean())
+        variance = (off**2).sum(axis=1) / (gap.errors.size - 1)
+        scatter += np.maximum(variance - _noise(gap.nearest, field), 0.0)
+    nodes = np.concatenate([gap.nodes for gap in punched])
+    values = np.concatenate([gap.values / gap.errors.size for gap in punched])
+    common = _parts(np.array([total]))[:, 0] ** 2 - _noise(NodeWeights.gathered(nodes, values), field)
     return scale**2 * np.maximum(common, 0.0) + scale * scatter
 
 
@@ -124,29 +145,56 @@ def _gaps(filled: NodeWeights, nx: int) -> Iterator[NodeWeights]:
         yield NodeWeights(filled.nodes[members], filled.values[members])
 
 
-def _error(weights: NodeWeights, field: Field) -> complex | float:
-    """The functional of the measured values."""
-    measured = field.measured
-    if np.iscomplexobj(weights.values):
-        u, v = measured["u"].ravel()[weights.nodes], measured["v"].ravel()[weights.nodes]
-        return complex((weights.values * (u - 1j * v)).sum())
-    return weights.of(measured["w"].ravel())
+def _measured(nodes: np.ndarray, field: Field, *, pair: bool) -> np.ndarray:
+    """Measured values at some nodes: conj(u + iv) for a pair of functionals, else w."""
+    if pair:
+        u, v = (field.measured[name].ravel()[nodes] for name in ("u", "v"))
+        return u - 1j * v
+    return field.measured["w"].ravel()[nodes]
 
 
-def _moved(gap: NodeWeights, change: FillMap, field: Field) -> list[NodeWeights]:
-    """Weights of a gap's error, filled less measured, at the nearest places that are wholly measured.
+def _moved(gaps: list[NodeWeights], change: FillMap, field: Field) -> list[_Punched] | None:
+    """Every gap at the nearest places that are wholly measured; None where one has too few.
 
     On even axes a filling that does not look at the values has the same weights everywhere.
     """
     nx = field.grid.shape[1]
-    rows = change.rows(gap.nodes)
-    filling = NodeWeights.gathered(rows.indices, rows.data * np.repeat(gap.values, np.diff(rows.indptr)))
-    error = filling - gap
-    shifts = _SHIFTS[_on_measured(error.nodes, _SHIFTS, field)][:_PLACES]
-    return [NodeWeights(error.nodes + dy * nx + dx, error.values) for dy, dx in shifts]
+    rows = change.rows(np.concatenate([gap.nodes for gap in gaps]))
+    found, row = [], 0
+    for gap in gaps:
+        sources = slice(*rows.indptr[[row, row + gap.nodes.size]])
+        per_node = np.diff(rows.indptr[row : row + gap.nodes.size + 1])
+        row += gap.nodes.size
+        spread = rows.data[sources] * np.repeat(gap.values, per_node)
+        nodes = np.concatenate([rows.indices[sources], gap.nodes])
+        error = NodeWeights.gathered(nodes, np.concatenate([spread, -gap.values]))
+        shifts = _places(error.nodes, field)
+        if len(shifts) < _FEWEST:
+            return None
+        places = error.nodes + (shifts @ [nx, 1])[:, None]
+        truth = _measured(places, field, pair=np.iscomplexobj(error.values))
+        found.append(
+            _Punched(
+                places.ravel(),
+                np.tile(error.values, len(shifts)),
+                truth @ error.values,
+                NodeWeights(places[0], error.values),
+            )
+        )
+    return found
 
 
-def _filled_again(gaps: list[NodeWeights], change: FillMap, field: Field) -> list[list[NodeWeights]]:
+def _places(nodes: np.ndarray, field: Field) -> np.ndarray:
+    """The shifts (k, 2) that put all nodes on measured ones, the nearest few."""
+    near = _SHIFTS[:_TRIED_FIRST]
+    near = near[_on_measured(nodes, near, field)]
+    if len(near) < _PLACES:
+        far = _SHIFTS[_TRIED_FIRST:]
+        near = np.concatenate([near, far[_on_measured(nodes, far, field)]])
+    return near[:_PLACES]
+
+
+def _filled_again(gaps: list[NodeWeights], change: FillMap, field: Field) -> list[_Punched] | None:
     """The same where weights depend on the place or the values: all gaps moved together and filled anew."""
     nx = field.grid.shape[1]
     found: list[list[NodeWeights]] = [[] for _ in gaps]
@@ -171,7 +219,16 @@ def _filled_again(gaps: list[NodeWeights], change: FillMap, field: Field) -> lis
             rows = again.rows(nodes)
             spread = rows.data * np.repeat(gaps[k].values, np.diff(rows.indptr))
             found[k].append(NodeWeights.gathered(rows.indices, spread) - NodeWeights(nodes, gaps[k].values))
-    return found
+    if min(map(len, found)) < _FEWEST:
+        return None
+    return [_together(places, field) for places in found]
+
+
+def _together(places: list[NodeWeights], field: Field) -> _Punched:
+    nodes, values = (np.concatenate([getattr(at, name) for at in places]) for name in ("nodes", "values"))
+    starts = np.cumsum([0, *(at.nodes.size for at in places[:-1])])
+    errors = np.add.reduceat(values * _measured(nodes, field, pair=np.iscomplexobj(values)), starts)
+    return _Punched(nodes, values, errors, places[0])
 
 
 def _on_measured(nodes: np.ndarray, shifts: np.ndarray, field: Field) -> np.ndarray:

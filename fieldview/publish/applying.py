@@ -27,6 +27,7 @@ from fieldview.publish.measuring import Progress
 from fieldview.publish.sharing import Share, bench_of, in_order
 from fieldview.publish.tables import csv_lines
 from fieldview.session.frames import Frame, left_out
+from fieldview.session.ledger import Tally
 from fieldview.session.measure import chosen_frames, frame_row, unanswered
 from fieldview.session.replay import Workbench
 from fieldview.session.store import dump_session, load_session
@@ -194,9 +195,8 @@ class _Work:
     def do(self, frame: Frame) -> str:
         """Write one frame's field and its part of the table; returns why it was skipped, or nothing."""
         try:
-            field = self.bench.field(frame)
+            field, tallies = self._field(frame)
             row = frame_row(self.bench.session, frame, field)
-            tallies = [] if isinstance(frame, str) else self.bench.tallies(frame)
         except UnreadableFrame as error:
             if isinstance(frame, str):
                 raise
@@ -226,6 +226,11 @@ class _Work:
             attributes=attributes,
         )
         return ""
+
+    def _field(self, frame: Frame) -> tuple[Field, tuple[Tally, ...]]:
+        if isinstance(frame, str):
+            return self.bench.field(frame), ()
+        return self.bench.replayed(frame)
 
     def forget(self, frame: Frame) -> None:
         """A frame as if it had not been tried."""

@@ -126,10 +126,14 @@ class Workbench:
             self._of_run.put(key, found, needed=KEPT_OF_THE_RUN)
         return found
 
+    def replayed(self, frame: int) -> tuple[Field, tuple[Tally, ...]]:
+        """One frame after the ledger, and what every line did to it."""
+        field, tallies = self._state(frame, len(self.session.ledger))
+        return field.with_(derivative=self.session.derivative), tallies
+
     def tallies(self, frame: int) -> list[Tally]:
         """What every ledger line did to one frame."""
-        self.field(frame)
-        return [self._state(frame, line + 1)[1] for line in range(len(self.session.ledger))]
+        return list(self.replayed(frame)[1])
 
     def changed_sources(self) -> list[str]:
         """A sentence for every source whose digest is not the one the session was saved with."""
@@ -175,8 +179,8 @@ class Workbench:
     def _error_key(self) -> str:
         return self.session.error_model.model_dump_json() + str(self.session.units)
 
-    def _state(self, frame: int, count: int) -> tuple[Field, Tally | None]:
-        """The field after ``count`` lines and the tally of the last of them."""
+    def _state(self, frame: int, count: int) -> tuple[Field, tuple[Tally, ...]]:
+        """The field after ``count`` lines and the tally of each of them."""
         start, state = count, None
         while start >= 0:
             state = self._shelf.get((frame, self._keys[start]))
@@ -184,10 +188,11 @@ class Workbench:
                 break
             start -= 1
         if state is None:
-            start, state = 0, (self._with_error_model_after(0, self.run[frame]), None)
+            start, state = 0, (self._with_error_model_after(0, self.run[frame]), ())
             self._keep(frame, 0, state)
         for line in range(start, count):
-            state = self._step(frame, line, state[0])
+            field, tally = self._step(frame, line, state[0])
+            state = field, (*state[1], tally)
             self._keep(frame, line + 1, state)
         return state
 
