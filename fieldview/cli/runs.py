@@ -32,13 +32,17 @@ def check(
     frames: Frames = None,
     format: Annotated[str, typer.Option("--format", help="table, csv (one line a frame) or json")] = "table",
     out: Out = None,
+    workers: Workers = 1,
+    cluster: Cluster = None,
 ) -> int:
     """Say whether the run is good: shares, outliers, noise, jumps, stuck frames, drift."""
+    from fieldview.publish import sharing
     from fieldview.publish.run_reports import FORMATS, check_report
 
     check_format(format, FORMATS)
     check_place(out)
-    text, remarks = check_report(session, frames, format, progress=progress, say=say)
+    with sharing.workers(workers, cluster) as executor:
+        text, remarks = check_report(session, frames, format, progress=progress, say=say, executor=executor)
     print_text(text, out)
     return WITH_REMARKS if remarks else DONE
 

@@ -15,8 +15,8 @@ from fieldview.compute.lag_window import LAGS
 from fieldview.publish import wording
 from fieldview.publish.maps import Values, check_ending, write_maps
 from fieldview.publish.measuring import Progress
-from fieldview.publish.sharing import Share, bench_of, in_order
-from fieldview.session.check import run_check
+from fieldview.publish.sharing import Share, bench_of, in_order, portions
+from fieldview.session.check import Seen, run_check, seen
 from fieldview.session.replay import Workbench
 from fieldview.session.statistics import RunStatistics, frame_numbers, stretch_statistics, stretches
 from fieldview.session.store import load_session
@@ -24,7 +24,15 @@ from fieldview.session.store import load_session
 FORMATS = ("table", "csv", "json")
 
 
-def check_report(path: Path, frames: str | None, format: str, *, progress: Progress, say) -> tuple[str, bool]:
+def check_report(
+    path: Path,
+    frames: str | None,
+    format: str,
+    *,
+    progress: Progress,
+    say,
+    executor: Executor | None = None,
+) -> tuple[str, bool]:
     """The run check of a session as text, and whether there was anything to remark about the sources."""
     bench = Workbench(load_session(path))
     remarks = said_changes(bench, say)
@@ -36,13 +44,24 @@ def check_report(path: Path, frames: str | None, format: str, *, progress: Progr
         remarks.append(f"frame {frame} was skipped: {error}")
         say(remarks[-1])
 
-    found = run_check(bench, numbers, on_skip=skip, on_frame=lambda _: next(ticks, None))
+    share = Share.of(bench.session)
+
+    def see(numbers: list[int]) -> Iterator[Seen]:
+        for part in in_order(_seen, [(share, part) for part in portions(numbers)], executor):
+            yield from part
+
+    found = run_check(bench, numbers, see=see, on_skip=skip, on_frame=lambda _: next(ticks, None))
     if format == "json":
         told = {"session": path.name, "findings": found.rows(), "frames": found.frame_rows()}
         return json.dumps(told, indent=1, ensure_ascii=False, allow_nan=False) + "\n", bool(remarks)
     if format == "csv":
         return csv_text(flat(row) for row in found.frame_rows()), bool(remarks)
     return "\n".join(_findings(found.rows())) + "\n", bool(remarks)
+
+
+def _seen(job) -> list[Seen]:
+    share, numbers = job
+    return [seen(bench_of(share), number) for number in numbers]
 
 
 def _findings(rows: list[dict]) -> Iterator[str]:

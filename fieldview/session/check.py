@@ -128,10 +128,40 @@ class RunCheck:
         ]
 
 
+@dataclass(frozen=True, eq=False)
+class Seen:
+    """What the check looks at of one frame: the frame after the ledger and as it was read, or why not.
+
+    Attributes
+    ----------
+    number : int
+    frame : Field or None
+    pixels : Field or None
+        Displacements as they were read, where the files hold them.
+    error : InputError or None
+        Why the frame cannot be used.
+    """
+
+    number: int
+    frame: Field | None = None
+    pixels: Field | None = None
+    error: InputError | None = None
+
+
+def seen(bench, number: int) -> Seen:
+    """One frame for the check. What was filled and smoothed is not looked at and left behind."""
+    try:
+        frame = bench.field(number).with_(maps=(), events=())
+        return Seen(number, frame, bench.run[number] if bench.run.units == PIXEL else None)
+    except InputError as error:
+        return Seen(number, error=error)
+
+
 def run_check(
     bench,
     frames: Iterable[int] | str | None = None,
     *,
+    see: Callable[[list[int]], Iterable[Seen]] | None = None,
     on_skip: Callable[[int, InputError], None] | None = None,
     on_frame: Callable[[int], None] | None = None,
 ) -> RunCheck:
@@ -142,6 +172,8 @@ def run_check(
     bench : Workbench
     frames : optional
         Numbers, or a text like ``"0:100:5"``; all if left out.
+    see : callable (numbers) -> Seen of each in their order, optional
+        Who replays the frames; this process by `seen` if left out.
     on_skip : callable (frame, InputError), optional
         Told of a frame that cannot be used; without it the error is raised.
     on_frame : callable (frame), optional
@@ -149,23 +181,20 @@ def run_check(
     """
     numbers, look, skipped, failure = frame_numbers(bench, frames), None, [], None
     close = set(np.array(numbers)[np.unique(np.linspace(0, len(numbers) - 1, LOOKED_AT).round().astype(int))])
-    for number in numbers:
-        try:
-            frame = bench.field(number)
-            pixels = bench.run[number] if bench.run.units == PIXEL else None
-        except InputError as error:
+    for one in (seen(bench, number) for number in numbers) if see is None else see(numbers):
+        if one.error is not None:
             if on_skip is None:
-                raise
-            on_skip(number, error)
-            skipped.append((number, str(error)))
-            failure = error
+                raise one.error
+            on_skip(one.number, one.error)
+            skipped.append((one.number, str(one.error)))
+            failure = one.error
             if look is not None:
                 look.skip()
         else:
-            look = look or _Look(frame)
-            look.add(number, frame, pixels, closely=number in close)
+            look = look or _Look(one.frame)
+            look.add(one.number, one.frame, one.pixels, closely=one.number in close)
         if on_frame is not None:
-            on_frame(number)
+            on_frame(one.number)
     if look is None:
         raise failure or InputError("the run has no frames to check")
     return look.result(tuple(skipped))

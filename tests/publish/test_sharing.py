@@ -68,7 +68,14 @@ def test_two_processes_apply_to_the_same_bytes(session_path, tmp_path, alone):
     assert content(tmp_path / "a") == alone
 
 
-@pytest.mark.parametrize("what", [["measure", "--format", "csv"], ["stats", "--format", "json"]])
+@pytest.mark.parametrize(
+    "what",
+    [
+        ["measure", "--format", "csv", "--frames", "0:24"],
+        ["stats", "--format", "json"],
+        ["check", "--format", "json", "--frames", "0:24"],
+    ],
+)
 def test_two_processes_print_the_same_bytes(session_path, what):
     one, two = (
         subprocess.run(
