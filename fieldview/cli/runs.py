@@ -93,6 +93,14 @@ def stats(
 
 
 @app.command()
+def store(session: SessionFile) -> int:
+    """Keep the run in one binary file beside the session, for quick scrubbing of large text runs."""
+    from fieldview.publish.storing import store_run
+
+    return WITH_REMARKS if store_run(session, progress=progress, say=say) else DONE
+
+
+@app.command()
 def apply(
     session: SessionFile,
     out: Annotated[Path, typer.Option("--out", help="Folder that the results go into", metavar="DIR")],

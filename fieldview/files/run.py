@@ -11,6 +11,7 @@ from collections.abc import Iterable
 from functools import cached_property
 from itertools import accumulate
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field
@@ -22,6 +23,9 @@ from fieldview.files.frames import Layout, frame_of, lay_out
 from fieldview.files.reading import Reading
 from fieldview.files.sources import expand
 
+if TYPE_CHECKING:
+    from fieldview.files.stored import StoredRun
+
 KEPT_FRAMES = 4
 """Frames kept once read; the replay above has a cache of its own."""
 
@@ -30,11 +34,16 @@ KEPT_FILES = 2
 
 
 def open_run(
-    patterns: Iterable[str | Path], reading: Reading | None = None, *, folder: Path | str = "."
-) -> Run:
+    patterns: Iterable[str | Path],
+    reading: Reading | None = None,
+    *,
+    folder: Path | str = ".",
+    store: str | Path | None = None,
+) -> Run | StoredRun:
     """The run in these files, read as ``reading`` says where they do not say it themselves.
 
-    Only the first file is read at once, and the heads of the others where files hold several frames.
+    Only the first file is read at once, and the heads of the others where files hold several frames. With a
+    run ``store`` (relative to the folder) that still fits the files, frames come from it.
 
     Raises
     ------
@@ -43,7 +52,32 @@ def open_run(
     InputError
         No file is there, or the first cannot be read.
     """
-    return Run(expand(patterns, folder), reading or Reading(), folder=folder)
+    sources, reading, note = tuple(expand(patterns, folder)), reading or Reading(), None
+    if store is not None:
+        from fieldview.files.stored import StoredRun, why_unfit
+
+        path = Path(folder) / store
+        why = why_unfit(path, sources, reading, Path(folder))
+        if why is None:
+            return StoredRun(path, sources, folder=Path(folder))
+        note = f"the run store {store} is not used: {why}; make it anew with loopflux store"
+    run = Run(sources, reading, folder=folder)
+    run.notes = (*run.notes, note) if note else run.notes
+    return run
+
+
+def name_within(source: Path, folder: Path) -> str:
+    """A source's path relative to the run's folder."""
+    return Path(os.path.relpath(source, folder)).as_posix()
+
+
+def digest_of(source: Path) -> str:
+    """sha256 of a file. InputError where it cannot be read."""
+    try:
+        with source.open("rb") as stream:
+            return "sha256:" + hashlib.file_digest(stream, "sha256").hexdigest()
+    except OSError as error:
+        raise InputError(f"{source}: cannot be read ({error.strerror}); check the path") from None
 
 
 class UnreadableFrame(InputError):
@@ -129,15 +163,7 @@ class Run:
 
     def digests(self) -> dict[str, str]:
         """sha256 of every source that is there, by its path relative to the run's folder."""
-        found = {}
-        for source in self.sources:
-            key = Path(os.path.relpath(source, self._folder)).as_posix()
-            try:
-                with source.open("rb") as stream:
-                    found[key] = "sha256:" + hashlib.file_digest(stream, "sha256").hexdigest()
-            except OSError as error:
-                raise InputError(f"{source}: cannot be read ({error.strerror}); check the path") from None
-        return found
+        return {name_within(source, self._folder): digest_of(source) for source in self.sources}
 
     def _place(self, frame: int) -> tuple[int, int]:
         number = bisect_right(self._ends, frame)

@@ -23,6 +23,9 @@ class RunSource(Entry):
         min_length=1, description="Paths or patterns relative to the session file, in natural order"
     )
     reading: Reading = Field(default_factory=Reading, description="What the files do not say of themselves")
+    store: str | None = Field(
+        None, description="Run store that frames may be read from, relative to the session file"
+    )
     digests: dict[str, str] = Field(
         default_factory=dict, description="sha256 of each source when the session was saved"
     )

@@ -75,7 +75,7 @@ class Workbench:
     def run(self) -> Run:
         if self._run is None:
             source = self.session.run
-            self._run = open_run(source.files, source.reading, folder=self.session.folder)
+            self._run = open_run(source.files, source.reading, folder=self.session.folder, store=source.store)
         return self._run
 
     @property
@@ -362,7 +362,7 @@ def _past(event: Event, iy: int, ix: int) -> str:
 
 def _run_key(session: Session) -> str:
     source = session.run
-    return f"{session.folder.resolve()}|{source.files}|{source.reading.model_dump_json()}"
+    return f"{session.folder.resolve()}|{source.files}|{source.reading.model_dump_json()}|{source.store}"
 
 
 def _digest(text: str) -> str:

@@ -171,6 +171,7 @@ def _relative_to(session: Session, folder: Path) -> Session:
     run = session.run.model_copy(
         update={
             "files": tuple(moved(entry) for entry in session.run.files),
+            "store": None if session.run.store is None else moved(session.run.store),
             "digests": {moved(entry): digest for entry, digest in session.run.digests.items()},
         }
     )

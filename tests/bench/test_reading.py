@@ -5,7 +5,11 @@ from time import perf_counter
 import numpy as np
 import pytest
 
+from fieldview.compute.field import Field
+from fieldview.compute.grid import Grid
 from fieldview.files import open_run
+from fieldview.files.delimited import write_csv
+from fieldview.files.stored import write_store
 
 ROUNDS = 5
 
@@ -36,3 +40,27 @@ def test_reading_a_million_rows(million_rows):
     ratio = float(np.median(ratios))
     print(f"a million rows into a Field: {ratio:.2f} x pandas.read_csv")
     assert ratio <= 1.8
+
+
+def test_frames_come_ten_times_faster_from_a_store(tmp_path):
+    """Scrubbing: frames of 128 x 128 in any order, from text and from the run store."""
+    axis = np.arange(128) * 0.001
+    rng = np.random.default_rng(0)
+    for number in range(20):
+        field = Field(Grid(axis, axis), **dict(zip("uv", rng.normal(size=(2, 128, 128)), strict=True)))
+        write_csv(tmp_path / f"f{number}.csv", field)
+    text = open_run(["f*.csv"], folder=tmp_path)
+    write_store(text, tmp_path / "a.store.h5")
+    kept = open_run(["f*.csv"], folder=tmp_path, store="a.store.h5")
+    order = rng.permutation(20)
+
+    def seconds(run) -> float:
+        start = perf_counter()
+        for number in order:
+            run[number]
+        return perf_counter() - start
+
+    seconds(kept)
+    ratio = min(seconds(text) for _ in range(3)) / min(seconds(kept) for _ in range(3))
+    print(f"frames from the store come {ratio:.0f} x faster than from text")
+    assert ratio >= 10
