@@ -7,7 +7,8 @@ import sys
 
 import typer
 
-from fieldview.cli import measuring, opening, runs, samples, time  # noqa: F401  (each registers its commands)
+# each registers its commands
+from fieldview.cli import measuring, opening, runs, samples, studies, time  # noqa: F401
 from fieldview.cli.terminal import DONE, REFUSED, STOPPED, app, say
 from fieldview.compute.errors import InputError
 

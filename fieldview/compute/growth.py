@@ -73,18 +73,11 @@ def growth_curve(
         Positive.
     """
     ready = prepared or prepare(field)
-    found = [quick_numbers(field, _scaled(shape, factor), ready, line=line) for factor in factors]
+    found = [quick_numbers(field, shape.scaled(factor), ready, line=line) for factor in factors]
     none = Number(None, field.units.circulation)
     names = ("circulation", "flux") if shape.closed else ("line_integral", "cross_flow")
     first, second = (tuple(getattr(numbers, name) or none for numbers in found) for name in names)
     return GrowthCurve(tuple(float(factor) for factor in factors), first, second)
-
-
-def _scaled(shape: Shape, factor: float) -> Shape:
-    if shape.closed:
-        return shape.scaled(factor)
-    points = shape.centroid + factor * (shape.vertices - shape.centroid)
-    return type(shape)(tuple((float(z.real), float(z.imag)) for z in points))
 
 
 def around(field: Field, shape: Shape, *, prepared: Prepared | None = None) -> Around:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass, replace
 from functools import cached_property
+from typing import Self
 
 import numpy as np
 
@@ -19,8 +20,28 @@ more than a cell. The bilinear kinks of pure noise leave some 1e-6 of speed time
 """
 
 
+class _Pointed:
+    """What shapes given by ``points`` share."""
+
+    def scaled(self, factor: float) -> Self:
+        """The shape scaled about its centroid."""
+        return self._mapped(lambda z: self.centroid + factor * (z - self.centroid))
+
+    def shifted(self, offset: complex) -> Self:
+        return self._mapped(lambda z: z + offset)
+
+    def turned(self, angle: float, about: complex | None = None) -> Self:
+        """Turned counter-clockwise by ``angle`` [rad] about a point (the centroid if left out)."""
+        centre = self.centroid if about is None else about
+        return self._mapped(lambda z: centre + (z - centre) * complex(math.cos(angle), math.sin(angle)))
+
+    def _mapped(self, change) -> Self:
+        moved = change(np.array([complex(*p) for p in self.points]))
+        return replace(self, points=tuple((float(z.real), float(z.imag)) for z in moved))
+
+
 @dataclass(frozen=True)
-class Polygon:
+class Polygon(_Pointed):
     """A closed contour through ``points``: tuple of (x, y). [length]"""
 
     points: tuple[tuple[float, float], ...]
@@ -47,22 +68,6 @@ class Polygon:
     def centroid(self) -> complex:
         """Centre of area, or of the vertices where there is no area."""
         return _centroid(self.vertices)
-
-    def scaled(self, factor: float) -> Polygon:
-        """The contour scaled about its centroid."""
-        return self._mapped(lambda z: self.centroid + factor * (z - self.centroid))
-
-    def shifted(self, offset: complex) -> Polygon:
-        return self._mapped(lambda z: z + offset)
-
-    def turned(self, angle: float, about: complex | None = None) -> Polygon:
-        """Turned counter-clockwise by ``angle`` [rad] about a point (the centroid if left out)."""
-        centre = self.centroid if about is None else about
-        return self._mapped(lambda z: centre + (z - centre) * complex(math.cos(angle), math.sin(angle)))
-
-    def _mapped(self, change) -> Polygon:
-        moved = change(np.array([complex(*p) for p in self.points]))
-        return replace(self, points=tuple((float(z.real), float(z.imag)) for z in moved))
 
     def contains(self, z: np.ndarray) -> np.ndarray:
         """Whether plane points ``z`` (complex, any shape) lie inside or on the contour: bool, same shape."""
@@ -156,7 +161,7 @@ class Ellipse:
 
 
 @dataclass(frozen=True)
-class Line:
+class Line(_Pointed):
     """An open line through ``points`` in drawn order; its normal is to the right of travel."""
 
     points: tuple[tuple[float, float], ...]

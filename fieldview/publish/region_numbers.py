@@ -34,6 +34,11 @@ ENTRIES = (
 )
 
 
+def symbol(key: str) -> str:
+    """How a number of a region's row is called in short."""
+    return next(entry.symbol for entry in ENTRIES if entry.key == (key,))
+
+
 @dataclass(frozen=True)
 class Figure:
     """A number taken from a row: value, unit, uncertainty; None where the row has null."""

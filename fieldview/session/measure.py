@@ -170,6 +170,15 @@ def number_row(number: Number) -> dict:
     }
 
 
+def region_named(session: Session, name: str) -> Region:
+    """Raises InputError naming the regions there are."""
+    found = next((region for region in session.regions if region.name == name), None)
+    if found is None:
+        known = ", ".join(region.name for region in session.regions) or "none"
+        raise InputError(f'there is no region "{name}"; the regions are: {known}')
+    return found
+
+
 def unanswered(row: dict) -> list[str]:
     """Names of the regions of a frame's row of which a requested value is null."""
     return [

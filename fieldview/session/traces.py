@@ -16,7 +16,7 @@ from fieldview.compute.spectrum import FEWEST_SAMPLES, Spectrum, spectrum
 from fieldview.compute.time_series import Convergence, autocorrelation, convergence
 from fieldview.files import UnreadableFrame
 from fieldview.session.clock import Clock
-from fieldview.session.measure import NUMBERS, number_row
+from fieldview.session.measure import NUMBERS, number_row, region_named
 from fieldview.session.statistics import frame_numbers
 from fieldview.session.wording import figure
 
@@ -115,10 +115,7 @@ def region_trace(
     InputError
         There is no such region, or no such number of it.
     """
-    chosen = next((entry for entry in bench.session.regions if entry.name == region), None)
-    if chosen is None:
-        known = ", ".join(entry.name for entry in bench.session.regions) or "none"
-        raise InputError(f'there is no region "{region}"; the regions are: {known}')
+    chosen = region_named(bench.session, region)
     if number not in NUMBERS:
         raise InputError(f'a region has no number "{number}"; it has: {", ".join(NUMBERS)}')
     units: list[str] = []
