@@ -59,7 +59,7 @@ def stats(
     ] = None,
     maps: Annotated[
         Path | None,
-        typer.Option("--maps", help="Write every map to this .csv, .nc or .npz file", metavar="FILE"),
+        typer.Option("--maps", help="Write every map to this file too", metavar="FILE"),
     ] = None,
     filled: Annotated[bool, typer.Option("--filled", help="Count filled vectors as samples")] = False,
     subtract_noise: Annotated[
@@ -105,7 +105,7 @@ def apply(
     session: SessionFile,
     out: Annotated[Path, typer.Option("--out", help="Folder that the results go into", metavar="DIR")],
     frames: Frames = None,
-    to: Annotated[str, typer.Option("--to", help="csv, nc or npz")] = "csv",
+    to: Annotated[str, typer.Option("--to", help="csv, nc, npz, h5, mat, vti or vtr")] = "csv",
     quantities: Annotated[
         str | None,
         typer.Option("--quantities", help="Derived quantities to write too, such as vorticity,speed"),

@@ -2,13 +2,17 @@
 
 from __future__ import annotations
 
+import io
+from collections.abc import Mapping
 from pathlib import Path
 
 import numpy as np
 
 from fieldview.compute.errors import InputError
+from fieldview.compute.field import Field
 from fieldview.files.contents import Contents
 from fieldview.files.npz import contents_of
+from fieldview.files.writing import identifiers, remarks_of, said_by_remarks, values_of, write_whole
 
 SUFFIXES = (".mat",)
 
@@ -29,9 +33,45 @@ def read(path: Path) -> Contents:
         )
     except Exception:  # scipy raises errors of many kinds on a damaged file
         raise InputError(f"{path.name}: is cut off or damaged; export it again") from None
+    own_names = loaded.pop("names", {})
+    stated = said_by_remarks(str(line) for line in np.ravel(loaded.pop("remarks", [])))
     arrays = dict(_flat({name: value for name, value in loaded.items() if not name.startswith("__")}))
     units = {str(k): str(v) for k, v in _units(loaded).items()}
-    return contents_of(path, "MATLAB container", arrays, units, {})
+    if stated and isinstance(own_names, dict):
+        arrays, units = ({own_names.get(n, n): held for n, held in part.items()} for part in (arrays, units))
+    return contents_of(path, "MATLAB container", arrays, units, stated)
+
+
+def write_matlab(
+    path: str | Path,
+    field: Field,
+    *,
+    quantities: Mapping[str, tuple[np.ndarray, str]] | None = None,
+    attributes: Mapping[str, str] | None = None,
+) -> None:
+    """Write one field as arrays [y, x], with structures ``units`` and ``names``; the same bytes every time.
+
+    Names become identifiers; ``names`` holds them as they were. Positions are lists along the axes, where
+    the axes were turned arrays in plane coordinates.
+    """
+    import scipy.io
+
+    values = values_of(field, quantities)
+    safe = identifiers(values)
+    arrays = {safe[name]: np.asarray(array) for name, (array, _) in values.items()}
+    if field.grid.placement.is_identity:
+        arrays |= {"x": field.grid.x, "y": field.grid.y}
+    arrays["units"] = {safe[name]: unit for name, (_, unit) in values.items()}
+    arrays["names"] = {safe[name]: name for name in values}
+    arrays["remarks"] = np.array(remarks_of(field, attributes), object)
+    stream = io.BytesIO()
+    scipy.io.savemat(stream, arrays, do_compression=True, long_field_names=True)
+    content = stream.getvalue()
+    # the first 116 bytes are free text, in which scipy writes the time of day
+    write_whole(Path(path), _HEADER + content[len(_HEADER) :])
+
+
+_HEADER = b"MATLAB 5.0 MAT-file, written by loopflux".ljust(116)
 
 
 def _flat(entries: dict, above: str = ""):

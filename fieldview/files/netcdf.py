@@ -10,12 +10,24 @@ from pathlib import Path
 
 import numpy as np
 
+import fieldview
 from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field, Status
+from fieldview.compute.quantities import QUANTITIES
 from fieldview.files.contents import Contents, Variable
-from fieldview.files.writing import STATUS_MEANINGS, remarks_of, said_by_remarks, values_of, write_whole
+from fieldview.files.writing import (
+    STATUS_MEANINGS,
+    identifiers,
+    remarks_of,
+    said_by_remarks,
+    values_of,
+    write_whole,
+)
 
 SUFFIXES = (".nc", ".nc4", ".cdf")
+
+_OWN_NAME = "name_in_session"
+"""Attribute with a variable's name where that is no identifier."""
 
 LONG_NAMES = {
     "x": "position along x",
@@ -31,22 +43,24 @@ def read(path: Path) -> Contents:
     dataset = _opened(path)
     lock = threading.Lock()
     variables, notes = [], []
-    for name, variable in dataset.variables.items():
-        name = str(name)
+    ours = _is_ours(dataset)
+    for key, variable in dataset.variables.items():
+        key = str(key)
+        name = str(variable.attrs.get(_OWN_NAME, key)) if ours else key
         if variable.dtype.kind not in "fiub" or variable.size == 0:
             if variable.shape and "char" not in str(variable.dims):
                 notes.append(f'"{name}" holds no numbers and is not read')
             continue
-        attributes = {key: value for key, value in variable.attrs.items() if isinstance(value, str)}
+        attributes = {word: value for word, value in variable.attrs.items() if isinstance(value, str)}
         meanings = "flag_meanings" in variable.attrs and name == "status"
-        attributes["role"] = "status" if meanings and _is_ours(dataset) else None
+        attributes["role"] = "status" if meanings and ours else None
         variables.append(
             Variable(
                 name,
                 variable.attrs.get("units"),
                 tuple(map(str, variable.dims)),
                 variable.shape,
-                _fetch(dataset, name, lock),
+                _fetch(dataset, key, lock),
                 variable.attrs.get("standard_name"),
                 _samples(variable),
                 attributes,
@@ -78,6 +92,7 @@ def write_netcdf(
     import xarray
 
     values = values_of(field, quantities)
+    safe = identifiers(values)
     turned = not field.grid.placement.is_identity
     dims = ("row", "column") if turned else ("y", "x")
     coordinates = {
@@ -87,15 +102,13 @@ def write_netcdf(
     if field.time is not None:
         coordinates["time"] = ((), field.time)
     arrays = {
-        name: (dims, np.asarray(array)) for name, (array, _) in values.items() if name not in ("x", "y")
+        safe[name]: (dims, np.asarray(array)) for name, (array, _) in values.items() if name not in ("x", "y")
     }
     dataset = xarray.Dataset(arrays, coordinates)
     for name, (_, unit) in values.items():
-        dataset[name].attrs["units"] = _spelled(unit)
-        if name in LONG_NAMES:
-            dataset[name].attrs["long_name"] = LONG_NAMES[name]
-    if not turned:
-        dataset["x"].attrs["axis"], dataset["y"].attrs["axis"] = "X", "Y"
+        dataset[safe[name]].attrs.update(units=_spelled(unit), long_name=_long_name(name))
+        if safe[name] != name:
+            dataset[safe[name]].attrs[_OWN_NAME] = name
     if "time" in dataset:
         dataset["time"].attrs.update(units="s", long_name="time of the frame in its run")
     codes = np.array([int(code) for code in Status], np.uint8)
@@ -105,10 +118,9 @@ def write_netcdf(
     for name in field.components:
         ancillary = [other for other in ("status", f"sigma_{name}") if other in dataset]
         dataset[name].attrs["ancillary_variables"] = " ".join(ancillary)
-        if f"sigma_{name}" in dataset:
-            dataset[f"sigma_{name}"].attrs["long_name"] = f"standard uncertainty of {name}"
     dataset.attrs = {
         "Conventions": "CF-1.11",
+        "history": f"read and cleaned by loopflux {fieldview.__version__}; the remarks name the session",
         "remarks": "\n".join(remarks_of(field, None)),
         **{key: str(value) for key, value in (attributes or {}).items()},
     }
@@ -116,6 +128,14 @@ def write_netcdf(
     fill |= {name: {"_FillValue": None} for name in coordinates}
     path = Path(path)
     write_whole(path, _bytes_of(dataset, fill))
+
+
+def _long_name(name: str) -> str:
+    if name in LONG_NAMES:
+        return LONG_NAMES[name]
+    of = name.removeprefix("sigma_") if name.startswith("sigma_") else name.removesuffix("_uncertainty")
+    shown = QUANTITIES[of].title.lower() if of in QUANTITIES else of
+    return shown if of == name else f"standard uncertainty of {LONG_NAMES.get(of, shown)}"
 
 
 def _bytes_of(dataset, encoding) -> bytes:

@@ -9,6 +9,10 @@ _WRITERS = {
     "csv": ("delimited", "write_csv"),
     "nc": ("netcdf", "write_netcdf"),
     "npz": ("npz", "write_npz"),
+    "h5": ("hdf5", "write_hdf5"),
+    "mat": ("matlab", "write_matlab"),
+    "vti": ("vtk", "write_image"),
+    "vtr": ("vtk", "write_rectilinear"),
 }
 """Module of fieldview.files and its function: (path, field, *, quantities, attributes)."""
 

@@ -16,6 +16,9 @@ from fieldview.compute.grid import Placement
 STATUS_MEANINGS = ("measured", "missing", "masked", "rejected", "filled")
 """Words for the status codes 0 to 4."""
 
+_LONGEST = 60
+"""Letters of an identifier; MATLAB allows 63."""
+
 _FIRST_REMARK = "loopflux field 1"
 
 
@@ -67,6 +70,20 @@ def remarks_of(field: Field, attributes: Mapping[str, str] | None) -> list[str]:
         remarks.append(f"axes: {shown} {'mirrored' if place.mirrored else 'direct'}")
     remarks += [f"{key}: {_plain(str(value))}" for key, value in (attributes or {}).items()]
     return remarks
+
+
+def identifiers(names: Iterable[str]) -> dict[str, str]:
+    """An identifier for every name, no two the same."""
+    found: dict[str, str] = {}
+    for name in names:
+        plain = re.sub(r"\W", "_", name, flags=re.ASCII)[:_LONGEST]
+        plain = plain if plain[:1].isalpha() else f"c_{plain}"
+        place = 1
+        while plain in found.values():
+            place += 1
+            plain = f"{plain.rstrip('0123456789')}{place}"
+        found[name] = plain
+    return found
 
 
 def said_by_remarks(remarks: Iterable[str]) -> dict:

@@ -12,7 +12,16 @@ RUN_FILES = (
     "Sessions and runs (*.json *.csv *.txt *.dat *.tsv *.nc *.h5 *.hdf5 *.npz *.mat *.gz)",
     "All files (*)",
 )
-FIELD_FILES = ("CSV (*.csv)", "NetCDF (*.nc)", "NumPy archive (*.npz)")
+FIELD_KINDS = {
+    ".csv": "CSV",
+    ".nc": "NetCDF",
+    ".npz": "NumPy archive",
+    ".h5": "HDF5",
+    ".mat": "MATLAB container",
+    ".vti": "VTK image data",
+    ".vtr": "VTK rectilinear data",
+}
+FIELD_FILES = tuple(f"{title} (*{ending})" for ending, title in FIELD_KINDS.items())
 
 
 def open_files(window) -> None:
@@ -47,7 +56,7 @@ def export_field(window) -> None:
     dialog.selectFile(f"{_stem(picture.session.run.files[0])}_{picture.shown.frame:05d}.csv")
 
     def write(chosen: str) -> None:
-        endings = dict(zip(FIELD_FILES, (".csv", ".nc", ".npz"), strict=True))
+        endings = dict(zip(FIELD_FILES, FIELD_KINDS, strict=True))
         window.desk.export(_ending(Path(chosen), endings.get(dialog.selectedNameFilter(), ".csv"), endings))
 
     dialog.fileSelected.connect(write)

@@ -285,15 +285,11 @@ def changed_sources(bench: Any) -> tuple[str, ...]:
 
 def export_field(field: Field, path: Path, names) -> Path:
     """Write the cleaned field with these quantities; the ending of the name chooses the format."""
-    from fieldview.compute.quantities import quantity_map
-    from fieldview.files import delimited, netcdf, npz
+    from fieldview.files.writers import writer
+    from fieldview.publish.maps import check_ending, quantity_values
 
-    writers = {".csv": delimited.write_csv, ".nc": netcdf.write_netcdf, ".npz": npz.write_npz}
-    writer = writers.get(path.suffix.lower())
-    if writer is None:
-        raise InputError(f"{path.name}: the ending must be .csv, .nc or .npz; add one to the name")
-    made = {name: quantity_map(field, name) for name in names}
-    writer(path, field, quantities={name: (m.values, m.unit) for name, m in made.items()})
+    check_ending(path)
+    writer(path.suffix[1:].lower())(path, field, quantities=quantity_values(field, names))
     return path
 
 

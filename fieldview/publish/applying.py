@@ -19,10 +19,11 @@ from pathlib import Path
 import fieldview
 from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field, Status
-from fieldview.compute.quantities import QUANTITIES, quantity_map
+from fieldview.compute.quantities import QUANTITIES
 from fieldview.files import UnreadableFrame
 from fieldview.files.writers import ENDINGS, writer
 from fieldview.files.writing import write_whole
+from fieldview.publish.maps import quantity_values
 from fieldview.publish.measuring import Progress
 from fieldview.publish.sharing import Share, bench_of, in_order
 from fieldview.publish.tables import csv_lines
@@ -49,9 +50,9 @@ def apply_session(
 ) -> bool:
     """Write the cleaned fields of a session's frames into a folder; True where there was anything to remark.
 
-    NAME_NNNNN.csv, .nc or .npz for each frame, ``regions.csv`` and ``record.json``. The same session goes on
-    in a folder where it was stopped; ``say`` is told every changed source, skipped frame and region without
-    an answer.
+    NAME_NNNNN.csv, or in another format of `fieldview.files.writers`, for each frame, ``regions.csv`` and
+    ``record.json``. The same session goes on in a folder where it was stopped; ``say`` is told every
+    changed source, skipped frame and region without an answer.
 
     ``strict`` ends the work at the first frame that cannot be read.
 
@@ -67,7 +68,7 @@ def apply_session(
     work = _Work(path, folder, bench, tuple(chosen_frames(bench, frames)), to, tuple(quantities))
     remarks = bench.changed_sources()
     # the first field tells whether the ledger and the quantities fit the run, before anything is written
-    _values(bench.field(work.frames[0]), work.quantities)
+    quantity_values(bench.field(work.frames[0]), work.quantities)
     for sentence in remarks:
         say(sentence)
     finished = work.finished_remarks()
@@ -222,7 +223,7 @@ class _Work:
         writer(self.to)(
             self.folder / self.field_name(frame),
             field,
-            quantities=_values(field, self.quantities),
+            quantities=quantity_values(field, self.quantities),
             attributes=attributes,
         )
         return ""
@@ -301,17 +302,6 @@ def _totals(parts: list[dict], line: int) -> dict[str, int]:
     for part in parts:
         total.update(part["ledger"][line])
     return dict(total)
-
-
-def _values(field: Field, names: Sequence[str]) -> dict:
-    """Quantities and their uncertainties with units, by the names they are written under."""
-    values = {}
-    for name in names:
-        made = quantity_map(field, name)
-        values[name] = (made.values, made.unit)
-        if made.uncertainty is not None:
-            values[f"{name}_uncertainty"] = (made.uncertainty, made.unit)
-    return values
 
 
 def _text(path: Path) -> str | None:

@@ -75,7 +75,7 @@ def test_the_cleaned_field_is_exported_and_read_back(window, qtbot, tmp_path, en
 def test_an_unknown_ending_is_refused(window, qtbot, tmp_path):
     window.desk.export(tmp_path / "out.doc")
     settle(qtbot, window)
-    assert ".csv, .nc or .npz" in window.banner.text.text()
+    assert ".csv, .nc, .npz" in window.banner.text.text()
     assert not list(tmp_path.glob("out*"))
 
 
