@@ -8,7 +8,7 @@ import sys
 import typer
 
 # each registers its commands
-from fieldview.cli import measuring, opening, runs, samples, studies, time  # noqa: F401
+from fieldview.cli import measuring, opening, outputs, runs, samples, studies, time  # noqa: F401
 from fieldview.cli.terminal import DONE, REFUSED, STOPPED, app, say
 from fieldview.compute.errors import InputError
 

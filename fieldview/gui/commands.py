@@ -8,9 +8,9 @@ from fieldview.gui import dialogs
 from fieldview.gui.actions import Command, has_field, has_frames, has_selection, has_session
 from fieldview.gui.panels.quantities import FIRST
 from fieldview.gui.picture import Picture
-from fieldview.gui.theme import COLOUR_WORDS, REGION_COLOURS
 from fieldview.gui.tools import TOOLS
-from fieldview.gui.units_shown import CHOICES
+from fieldview.publish.looks import COLOUR_WORDS, REGION_COLOURS
+from fieldview.publish.units_shown import CHOICES
 
 OTHER_SAMPLES = (
     ("stirred_tank", "one vortex, in pixels with a calibration"),

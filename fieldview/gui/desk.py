@@ -147,7 +147,8 @@ class Desk(QObject):
         self.commit(name, session)
 
     def add_region(self, region) -> None:
-        from fieldview.gui.theme import REGION_COLOURS, region_colour
+        from fieldview.gui.theme import region_colour
+        from fieldview.publish.looks import REGION_COLOURS
 
         session = self.picture.session
         if session is None:

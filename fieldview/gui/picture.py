@@ -13,7 +13,7 @@ import numpy as np
 
 from fieldview.compute.field import Field
 from fieldview.gui.jobs import Task
-from fieldview.gui.units_shown import UnitView, unit_view
+from fieldview.publish.units_shown import UnitView, unit_view
 from fieldview.session.models import Session
 from fieldview.session.regions import Region
 from fieldview.session.undo import History

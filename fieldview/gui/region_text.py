@@ -4,9 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 
-from fieldview.gui.units_shown import UnitView
 from fieldview.publish import wording
 from fieldview.publish.region_numbers import ENTRIES, figure
+from fieldview.publish.units_shown import UnitView
 
 
 def label_lines(

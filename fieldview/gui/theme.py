@@ -9,18 +9,12 @@ import numpy as np
 from PySide6.QtCore import Qt
 from PySide6.QtGui import QColor, QFont, QGuiApplication, QPalette
 
+from fieldview.publish.looks import REGION_COLOURS, REGION_DASHES, diverging, luminance
+
 FONT_PIXELS = 13
 SMALL_PIXELS = 11
 ROW = 24
 GRID = 4
-
-REGION_COLOURS = ("#0072b2", "#d55e00", "#009e73", "#cc79a7", "#e69f00", "#56b4e9")
-"""Okabe & Ito (2008), the ones that show on white and on near-black alike."""
-
-COLOUR_WORDS = ("blue", "vermilion", "green", "purple", "orange", "sky blue")
-
-REGION_DASHES = ((), (6, 3), (2, 2.5), (9, 3, 2, 3), (12, 4), (4, 2, 1, 2, 1, 2))
-"""One dash per region as well, in pen widths, so that colour is never the only sign."""
 
 
 @dataclass(frozen=True)
@@ -122,44 +116,9 @@ def table_for_range(theme: Theme, kind: str, low: float, high: float) -> np.ndar
     return colour_table(theme, kind if even else "unsigned")
 
 
-def diverging(low: str, middle: str, high: str) -> np.ndarray:
-    """256 colours from ``low`` over ``middle`` to ``high``, in even steps of CIE L*a*b* along both arms."""
-    ends = [_to_lab(colour) for colour in (low, middle, high)]
-    # both arms reach the same lightness, so that neither sign looks stronger
-    ends[0][0] = ends[2][0] = (ends[0][0] + ends[2][0]) / 2
-    share = np.linspace(0, 2, 256)
-    lab = np.column_stack([np.interp(share, [0, 1, 2], [end[i] for end in ends]) for i in range(3)])
-    return _from_lab(lab)
-
-
-_RGB_TO_XYZ = np.array(
-    [[0.4124564, 0.3575761, 0.1804375], [0.2126729, 0.7151522, 0.0721750], [0.0193339, 0.1191920, 0.9503041]]
-)
-"""sRGB primaries and D65 white (IEC 61966-2-1)."""
-
-_WHITE = _RGB_TO_XYZ.sum(axis=1)
-
-
-def _to_lab(colour: str) -> np.ndarray:
-    """CIE 1976 L*a*b* of a colour, relative to D65."""
-    rgb = np.array(QColor(colour).getRgbF()[:3])
-    linear = np.where(rgb <= 0.04045, rgb / 12.92, ((rgb + 0.055) / 1.055) ** 2.4)
-    x, y, z = np.cbrt(_RGB_TO_XYZ @ linear / _WHITE)  # above 0.9 % of white, as all colours here are
-    return np.array([116 * y - 16, 500 * (x - y), 200 * (y - z)])
-
-
-def _from_lab(lab: np.ndarray) -> np.ndarray:
-    """uint8 ndarray (n, 3) of colours given as L*a*b* (n, 3)."""
-    y = (lab[:, 0] + 16) / 116
-    xyz = np.column_stack([y + lab[:, 1] / 500, y, y - lab[:, 2] / 200]) ** 3 * _WHITE
-    linear = np.clip(xyz @ np.linalg.inv(_RGB_TO_XYZ).T, 0, 1)
-    rgb = np.where(linear <= 0.0031308, 12.92 * linear, 1.055 * linear ** (1 / 2.4) - 0.055)
-    return (rgb * 255).round().astype(np.uint8)
-
-
 def contrast(one: str, other: str) -> float:
     """Contrast ratio of two colours, 1 to 21 (relative luminance as in WCAG 2.1)."""
-    bright, dim = sorted((_luminance(one), _luminance(other)), reverse=True)
+    bright, dim = sorted((luminance(one), luminance(other)), reverse=True)
     return (bright + 0.05) / (dim + 0.05)
 
 
@@ -218,10 +177,3 @@ def palette(theme: Theme) -> QPalette:
     for role in (roles.WindowText, roles.Text, roles.ButtonText):
         made.setColor(QPalette.ColorGroup.Disabled, role, QColor(theme.muted))
     return made
-
-
-def _luminance(colour: str) -> float:
-    linear = [
-        c / 12.92 if c <= 0.04045 else ((c + 0.055) / 1.055) ** 2.4 for c in QColor(colour).getRgbF()[:3]
-    ]
-    return 0.2126 * linear[0] + 0.7152 * linear[1] + 0.0722 * linear[2]

@@ -9,6 +9,7 @@ import numpy as np
 from pydantic import BaseModel
 
 from fieldview.compute.grid import Placement
+from fieldview.compute.quantities import QUANTITIES
 from fieldview.session import regions
 from fieldview.session.models import Session
 from fieldview.session.steps import Calibrate, TurnAxes
@@ -31,8 +32,19 @@ def set_calibration(session: Session, step: Calibrate | None) -> Session:
             "regions": tuple(_moved_region(region, change) for region in session.regions),
             "error_model": _error_model(session, change),
             "reference": _converted(session.reference, change),
+            "figures": tuple(_figure(figure, change) for figure in session.figures),
         }
     )
+
+
+def _figure(figure, change: _Change):
+    """A figure with its probe and the ends of its colours in the new units."""
+    entry = QUANTITIES.get(figure.quantities[0])
+    factor = 1.0 if entry is None else change.length**entry.length * change.time**entry.time
+    ends = {
+        name: None if (end := getattr(figure, name)) is None else end * factor for name in ("low", "high")
+    }
+    return _converted(figure, change).model_copy(update=ends)
 
 
 def _calibration(session: Session) -> Calibrate | None:

@@ -9,6 +9,7 @@ from pydantic import Field, PrivateAttr, field_validator, model_validator
 
 from fieldview.files.reading import Reading
 from fieldview.session.base import Entry, Point, quantity
+from fieldview.session.figures import FigureSettings
 from fieldview.session.regions import Region
 from fieldview.session.steps import AnyStep, Calibrate, TurnAxes
 
@@ -126,6 +127,7 @@ class Session(Entry):
     regions: tuple[Region, ...] = Field((), description="Contours and lines")
     reference: Reference = Field(default_factory=Reference)
     phase: PhaseSource | None = Field(None, description="What the phase of a frame is, for phase averages")
+    figures: tuple[FigureSettings, ...] = Field((), description="Figures that are made of this session")
     view: dict[str, Any] = Field(default_factory=dict, description="How the window shows it; no number")
 
     _folder: Path | None = PrivateAttr(None)
@@ -153,6 +155,10 @@ class Session(Entry):
         twice = next((name for name in names if names.count(name) > 1), None)
         if twice is not None:
             raise ValueError(f'two regions are named "{twice}"; names must be unique')
+        names = [figure.name for figure in self.figures]
+        twice = next((name for name in names if names.count(name) > 1), None)
+        if twice is not None:
+            raise ValueError(f'two figures are named "{twice}"; names must be unique')
         for model in (Calibrate, TurnAxes):
             places = [i for i, step in enumerate(self.ledger) if isinstance(step, model)]
             key = model.model_fields["step"].default

@@ -71,6 +71,8 @@ def save_session(session: Session, path: str | Path) -> None:
 def dump_session(session: Session) -> str:
     """The session as JSON text; the same session gives the same text."""
     document = session.model_dump(mode="json", exclude_none=True)
+    if not session.figures:
+        del document["figures"]
     return _laid_out(document) + "\n"
 
 

@@ -2,7 +2,7 @@
 
 import pytest
 
-from fieldview.gui.units_shown import powers_of, unit_view
+from fieldview.publish.units_shown import powers_of, unit_view
 from fieldview.session.models import Reference, RunSource, Session
 from tests.gui.conftest import action, settle
 

@@ -16,8 +16,8 @@ from fieldview.gui.picture import MapOf, Picture
 from fieldview.gui.region_text import label_lines
 from fieldview.gui.shaping import handles
 from fieldview.gui.theme import LIGHT, Theme
-from fieldview.gui.units_shown import UnitView
 from fieldview.publish import wording
+from fieldview.publish.units_shown import UnitView
 
 _MARK_WORDS = (
     (Status.MEASURED, "measured"),

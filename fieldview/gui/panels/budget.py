@@ -13,9 +13,9 @@ from fieldview.gui.panels.tables import RAW, Cell, CellModel, dense
 from fieldview.gui.picture import Picture
 from fieldview.gui.region_text import scaled
 from fieldview.gui.theme import LIGHT, Theme
-from fieldview.gui.units_shown import UnitView
 from fieldview.publish import wording
 from fieldview.publish.region_numbers import ENTRIES
+from fieldview.publish.units_shown import UnitView
 
 PART_WORDS = {
     "random": "scatter of the vectors",

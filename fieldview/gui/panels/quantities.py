@@ -14,8 +14,8 @@ from fieldview.gui.panels.base import Panel, label
 from fieldview.gui.picture import Card, Picture
 from fieldview.gui.pursuit import levels_of_values
 from fieldview.gui.theme import Theme
-from fieldview.gui.units_shown import UnitView
 from fieldview.publish import wording
+from fieldview.publish.units_shown import UnitView
 
 FIRST = ("speed", "vorticity", "divergence")
 SCHEME_WORDS = {
