@@ -1,4 +1,4 @@
-"""Commands that make something to hand on: figure."""
+"""Commands that make something to hand on: figure and workbook."""
 
 from __future__ import annotations
 
@@ -10,7 +10,10 @@ import typer
 from fieldview.cli.terminal import (
     DONE,
     WITH_REMARKS,
+    Cluster,
+    Frames,
     SessionFile,
+    Workers,
     app,
     check_place,
     progress,
@@ -69,6 +72,24 @@ def figure(
     if caption is not None:
         write_text(caption, made.caption())
     return WITH_REMARKS if made.remarks else DONE
+
+
+@app.command()
+def workbook(
+    session: SessionFile,
+    out: Annotated[Path, typer.Option("--out", help="An .xlsx file", metavar="FILE")],
+    frames: Frames = None,
+    workers: Workers = 1,
+    cluster: Cluster = None,
+) -> int:
+    """Regions, run check and statistics as a workbook, every number with its unit and uncertainty."""
+    from fieldview.publish import sharing
+    from fieldview.publish.workbook import write_workbook
+
+    check_place(out)
+    with sharing.workers(workers, cluster) as executor:
+        remarks = write_workbook(session, out, frames, progress=progress, say=say, executor=executor)
+    return WITH_REMARKS if remarks else DONE
 
 
 def _width(text: str) -> float:

@@ -62,17 +62,33 @@ def measurement(
 
     for sentence in bench.changed_sources():
         remark(sentence)
-    rows = _rows(bench, chosen, remark, executor, strict)
-    rows = progress(rows, "measuring", len(chosen))
+    rows = measured_rows(bench, chosen, remark, executor, progress=progress, strict=strict)
     text = tempfile.TemporaryFile("w+", encoding="utf-8", newline="")  # noqa: SIM115 - handed on
     try:
-        for line in FORMATS[format](path.name, _watched(rows, remark)):
+        for line in FORMATS[format](path.name, rows):
             text.write(line + "\n")
     except BaseException:
         text.close()
         raise
     text.seek(0)
     return Measurement(text, bool(said))
+
+
+def measured_rows(
+    bench: Workbench,
+    frames: list,
+    remark: Callable[[str], None],
+    executor: Executor | None,
+    *,
+    progress: Progress,
+    strict: bool = False,
+) -> Iterator[dict]:
+    """Rows of the frames as they come; ``remark`` is told what was skipped and what has no value.
+
+    Raises InputError where no frame could be read, or with ``strict`` at the first that cannot.
+    """
+    rows = progress(_rows(bench, frames, remark, executor, strict), "measuring", len(frames))
+    return _watched(rows, remark)
 
 
 def _rows(bench: Workbench, frames: list, remark, executor: Executor | None, strict: bool) -> Iterator[dict]:

@@ -16,7 +16,8 @@ from fieldview.publish import wording
 from fieldview.publish.maps import Values, check_ending, write_maps
 from fieldview.publish.measuring import Progress
 from fieldview.publish.sharing import Share, bench_of, in_order, portions
-from fieldview.session.check import Seen, run_check, seen
+from fieldview.publish.tables import plain_text
+from fieldview.session.check import RunCheck, Seen, run_check, seen
 from fieldview.session.replay import Workbench
 from fieldview.session.statistics import RunStatistics, frame_numbers, stretch_statistics, stretches
 from fieldview.session.store import load_session
@@ -36,27 +37,40 @@ def check_report(
     """The run check of a session as text, and whether there was anything to remark about the sources."""
     bench = Workbench(load_session(path))
     remarks = said_changes(bench, say)
+
+    def remark(sentence: str) -> None:
+        remarks.append(sentence)
+        say(sentence)
+
     numbers = frame_numbers(bench, frames)
-    ticks = iter(progress(numbers, "checking", len(numbers)))
-    next(ticks, None)
-
-    def skip(frame, error):
-        remarks.append(f"frame {frame} was skipped: {error}")
-        say(remarks[-1])
-
-    share = Share.of(bench.session)
-
-    def see(numbers: list[int]) -> Iterator[Seen]:
-        for part in in_order(_seen, [(share, part) for part in portions(numbers)], executor):
-            yield from part
-
-    found = run_check(bench, numbers, see=see, on_skip=skip, on_frame=lambda _: next(ticks, None))
+    found = checked(bench, numbers, progress=progress, remark=remark, executor=executor)
     if format == "json":
         told = {"session": path.name, "findings": found.rows(), "frames": found.frame_rows()}
         return json.dumps(told, indent=1, ensure_ascii=False, allow_nan=False) + "\n", bool(remarks)
     if format == "csv":
         return csv_text(flat(row) for row in found.frame_rows()), bool(remarks)
     return "\n".join(_findings(found.rows())) + "\n", bool(remarks)
+
+
+def checked(
+    bench: Workbench, numbers: list[int], *, progress: Progress, remark, executor: Executor | None = None
+) -> RunCheck:
+    """The run check over these frames, whoever replays them; ``remark`` is told what was skipped."""
+    ticks = iter(progress(numbers, "checking", len(numbers)))
+    next(ticks, None)
+    share = Share.of(bench.session)
+
+    def see(numbers: list[int]) -> Iterator[Seen]:
+        for part in in_order(_seen, [(share, part) for part in portions(numbers)], executor):
+            yield from part
+
+    return run_check(
+        bench,
+        numbers,
+        see=see,
+        on_skip=lambda frame, error: remark(f"frame {frame} was skipped: {error}"),
+        on_frame=lambda _: next(ticks, None),
+    )
 
 
 def _seen(job) -> list[Seen]:
@@ -91,16 +105,19 @@ def statistics_report(
     check_ending(maps)
     bench = Workbench(load_session(path))
     remarks = said_changes(bench, say)
-    numbers = frame_numbers(bench, frames)
-    run = RunStatistics(filled=filled)
-    jobs = [(Share.of(bench.session), tuple(part), filled) for part in stretches(numbers)]
-    for part, skipped in progress(in_order(_stretch, jobs, executor), "statistics", len(jobs)):
-        run.merge(part)
-        for sentence in skipped:
-            remarks.append(sentence)
-            say(sentence)
-    if not run.frames:
-        raise InputError(remarks[-1] if remarks else f"{path}: the run has no frames")
+
+    def remark(sentence: str) -> None:
+        remarks.append(sentence)
+        say(sentence)
+
+    run = statistics_over(
+        bench,
+        frame_numbers(bench, frames),
+        filled=filled,
+        progress=progress,
+        remark=remark,
+        executor=executor,
+    )
     rows = run.rows(subtract_noise=subtract_noise, points=points)
     if maps is not None:
         write_maps(maps, run.mean, _map_values(run, subtract_noise), session=path)
@@ -110,6 +127,30 @@ def statistics_report(
     if format == "csv":
         return csv_text(flat(row) for row in rows), bool(remarks)
     return "\n".join(_statistics(rows, run)) + "\n", bool(remarks)
+
+
+def statistics_over(
+    bench: Workbench,
+    numbers: list[int],
+    *,
+    filled: bool = False,
+    progress: Progress,
+    remark,
+    executor: Executor | None = None,
+) -> RunStatistics:
+    """The statistics over these frames, whoever replays them; ``remark`` is told what was skipped.
+
+    Raises InputError where no frame could be used.
+    """
+    run, last = RunStatistics(filled=filled), "the run has no frames"
+    jobs = [(Share.of(bench.session), tuple(part), filled) for part in stretches(numbers)]
+    for part, skipped in progress(in_order(_stretch, jobs, executor), "statistics", len(jobs)):
+        run.merge(part)
+        for last in skipped:
+            remark(last)
+    if not run.frames:
+        raise InputError(last)
+    return run
 
 
 def _stretch(job) -> tuple[RunStatistics, list[str]]:
@@ -184,5 +225,6 @@ def csv_text(rows: Iterable[dict]) -> str:
         if writer is None:
             writer = csv.DictWriter(out, row, lineterminator="\n")
             writer.writeheader()
-        writer.writerow(row)
+        cells = {key: plain_text(cell) if isinstance(cell, str) else cell for key, cell in row.items()}
+        writer.writerow(cells)
     return out.getvalue()

@@ -20,13 +20,18 @@ def csv_lines(rows: Iterable[Mapping]) -> Iterator[str]:
     Every number has its unit and its standard uncertainties in columns of their own. The columns are
     chosen by the first frame, so that frames can stream.
     """
+    yield from map(_joined, table_rows(rows))
+
+
+def table_rows(rows: Iterable[Mapping]) -> Iterator[list]:
+    """The same as cells: the titles first, numbers as numbers, empty text for what is not there."""
     entries: list[Entry] | None = None
     for row in rows:
         if entries is None:
             entries = [e for e in ENTRIES if any(figure(r, e.key) is not None for r in row["regions"])]
-            yield _joined(_titles(entries))
+            yield _titles(entries)
         for region in row["regions"]:
-            yield _joined(_cells(row, region, entries))
+            yield _cells(row, region, entries)
 
 
 def text_lines(rows: Iterable[Mapping]) -> Iterator[str]:
@@ -111,5 +116,6 @@ def _joined(cells: list) -> str:
     return out.getvalue()
 
 
-def _digits(value) -> str:
-    return "" if value is None else repr(float(value))
+def _digits(value) -> float | str:
+    """A number that is written with all its digits, or nothing."""
+    return "" if value is None else float(value)
