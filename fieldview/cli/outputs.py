@@ -1,4 +1,4 @@
-"""Commands that make something to hand on: figure and workbook."""
+"""Commands that make something to hand on: figure, workbook and report."""
 
 from __future__ import annotations
 
@@ -89,6 +89,29 @@ def workbook(
     check_place(out)
     with sharing.workers(workers, cluster) as executor:
         remarks = write_workbook(session, out, frames, progress=progress, say=say, executor=executor)
+    return WITH_REMARKS if remarks else DONE
+
+
+@app.command()
+def report(
+    session: SessionFile,
+    out: Annotated[Path, typer.Option("--out", help="An .html file", metavar="FILE")],
+    frames: Frames = None,
+    choices: Annotated[
+        bool, typer.Option("--choices", help="Study what the analyst's choices do; takes its time")
+    ] = False,
+    workers: Workers = 1,
+    cluster: Cluster = None,
+) -> int:
+    """The measurement report: everything that was done, measured and assumed, in one file."""
+    from fieldview.publish import sharing
+    from fieldview.publish.report import write_report
+
+    check_place(out)
+    with sharing.workers(workers, cluster) as executor:
+        remarks = write_report(
+            session, out, frames, choices=choices, progress=progress, say=say, executor=executor
+        )
     return WITH_REMARKS if remarks else DONE
 
 
