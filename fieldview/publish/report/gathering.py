@@ -15,7 +15,7 @@ from fieldview.compute.stencils import SCHEMES
 from fieldview.publish import wording
 from fieldview.publish.figures import caption, draw, picture
 from fieldview.publish.figures.captions import uncertainty_statement
-from fieldview.publish.region_numbers import symbol
+from fieldview.publish.region_numbers import ENTRIES, figure, symbol
 from fieldview.session.choices import TITLES, Study
 from fieldview.session.figures import WIDTHS, FigureSettings
 from fieldview.session.measure import NUMBERS
@@ -38,7 +38,7 @@ def run_facts(bench: Workbench) -> list[tuple[str, str]]:
     run, units = bench.run, bench.units
     grid = bench.field(0).grid
     nx, ny = grid.x.size, grid.y.size
-    spacing = " × ".join(wording.short(step, digits=4) for step in grid.spacing)
+    spacing = " × ".join(f"{step:.4g}" for step in grid.spacing)
     facts = [
         ("frames", str(len(run))),
         ("grid", f"{nx} × {ny} nodes, mean spacing {spacing} {units.length}"),
@@ -66,10 +66,10 @@ def error_facts(bench: Workbench, field) -> list[tuple[str, str]]:
             middle = float(np.nanmedian(sigma))
             varies = "" if np.nanmin(sigma) == np.nanmax(sigma) else " (median over the nodes)"
             facts.append((f"sigma of {name}", f"{wording.short(middle)} {unit}{varies}, {error.origin}"))
-    nodes = " × ".join(wording.short(part) for part in error.correlation)
+    nodes = " × ".join(f"{part:.4g}" for part in error.correlation)
     facts.append(("correlation", f"{nodes} nodes" + ("" if error.correlation_stated else ", not stated")))
     if error.window is not None:
-        size = " × ".join(wording.short(part) for part in error.window)
+        size = " × ".join(f"{part:.4g}" for part in error.window)
         facts.append(("measuring window", f"{size} {field.units.length}"))
     parts = bench.session.error_model.systematic
     for name, value in parts.model_dump().items():
@@ -108,29 +108,54 @@ def _region_table(place: int, rows: list[dict]) -> dict:
     first = entries[0]
     keys = [key for key in NUMBERS if key in first]
     titles = [wording.with_unit(symbol(key), first[key]["unit"]) for key in keys]
-    if "closure" in first:
-        titles += ["Γ − ∬ω", "Φ − ∬∇·u"]
-    if "resolution_gap" in first:
-        titles.append("res. gap")
-    lines = []
-    for row, entry in zip(rows, entries, strict=True):
-        cells = [_cell(entry[key]) for key in keys]
-        if "closure" in entry:
-            cells += [_cell(entry["closure"]["circulation"]), _cell(entry["closure"]["flux"])]
-        if "resolution_gap" in first:
-            gap = next(iter(entry.get("resolution_gap", {}).values()), None)
-            cells.append(wording.short(gap, digits=2))
-        share = entry["coverage"].get("contour")
-        lines.append({"frame": row["frame"], "cells": cells, "measured": wording.percent(share)})
+    tables = [
+        {
+            "titles": [*titles, "measured"],
+            "rows": [
+                {
+                    "frame": row["frame"],
+                    "cells": [
+                        *(_cell(entry[key]) for key in keys),
+                        wording.percent(entry["coverage"].get("contour")),
+                    ],
+                }
+                for row, entry in zip(rows, entries, strict=True)
+            ],
+        }
+    ]
+    checks = _checks(rows, entries)
     warnings = dict.fromkeys(said for entry in entries for said in entry["warnings"])
     return {
         "name": first["name"],
         "shape": first["shape"],
-        "titles": titles,
-        "rows": lines,
+        "tables": [*tables, checks] if checks["titles"] else tables,
         "budgets": [_budget(key, first) for key in keys if first["budget"].get(key)],
         "warnings": list(warnings),
     }
+
+
+def _checks(rows: list[dict], entries: list[dict]) -> dict:
+    """Closures and gaps of a region: what tells whether the grid resolves the flow."""
+    names = ("closure", "resolution_gap", "window_gap")
+    shown = [
+        entry for entry in ENTRIES if entry.key[0] in names and figure(entries[0], entry.key) is not None
+    ]
+    unit = next((found.unit for entry in shown if (found := figure(entries[0], entry.key)).unit != "1"), "1")
+    return {
+        "titles": [wording.with_unit(entry.symbol, unit) for entry in shown],
+        "rows": [
+            {"frame": row["frame"], "cells": [_check(figure(entry, check.key)) for check in shown]}
+            for row, entry in zip(rows, entries, strict=True)
+        ],
+    }
+
+
+def _check(found) -> str:
+    if found is None or found.value is None:
+        return "no value"
+    if found.uncertainty is None:
+        return wording.short(found.value, digits=2)
+    return " ± ".join(wording.pair(found.value, found.uncertainty))
 
 
 def _cell(number: dict) -> str:
