@@ -225,6 +225,7 @@ def output_commands() -> tuple[Command, ...]:
 
 def all_commands() -> tuple[Command, ...]:
     from fieldview.gui.help import help_commands
+    from fieldview.gui.study_commands import hand_on_commands, study_commands
 
     return (
         *run_commands(),
@@ -232,7 +233,9 @@ def all_commands() -> tuple[Command, ...]:
         *view_commands(),
         *unit_commands(),
         *measure_commands(),
+        *study_commands(),
         *output_commands(),
+        *hand_on_commands(),
         *help_commands(),
     )
 

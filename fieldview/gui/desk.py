@@ -92,6 +92,23 @@ class Desk(QObject):
                 "export", work.export_field, self.picture.field, path, names, lane="derive", title=title
             )
 
+    def report(self, path: Path) -> None:
+        """Write the measurement report of the session as it is now, in the background."""
+        from fieldview.gui.studies import work as studies
+
+        name = self.picture.path.name if self.picture.path is not None else "a session not saved yet"
+        given = (self.bench, self.picture.session, name, path)
+        title = f"Writing {path.name}"
+        self.jobs.submit("report", studies.report_file, *given, lane="study", title=title, reports=True)
+
+    def store(self, path: Path) -> None:
+        """Keep the run in one binary file in the background; the session then reads from it."""
+        from fieldview.gui.studies import work as studies
+
+        bench = self.bench.updated(self.picture.session)
+        title = "Storing the run"
+        self.jobs.submit("store", studies.store, bench, path, lane="study", title=title, reports=True)
+
     def follow(self) -> None:
         """Measure every region on every frame in the background; asked again while it runs, it stops."""
         picture = self.picture
@@ -258,7 +275,13 @@ class Desk(QObject):
             if self.after_saving is not None:
                 follow, self.after_saving = self.after_saving, None
                 follow()
-        elif answer.kind == "export":
+        elif answer.kind.startswith("study."):
+            return  # the sheet that asked shows it
+        elif answer.kind == "store":
+            run = self.picture.session.run.model_copy(update={"store": answer.value.name})
+            self.edit("Read the run from its store", run=run)
+            self.tell(f"The run is kept in {answer.value.name}; save the session to use it next time.")
+        elif answer.kind in ("export", "report"):
             self.tell(f"{answer.value.name} was written to {answer.value.parent}.")
         elif answer.kind == "sample":
             self.open([answer.value])

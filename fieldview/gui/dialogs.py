@@ -104,10 +104,16 @@ def copy_regions(window) -> None:
     window.desk.tell("The regions table is on the clipboard, ready to paste into a sheet.")
 
 
-def export_regions(window) -> None:
-    dialog = _dialog(window, "Export the regions table", QFileDialog.FileMode.AnyFile, ("CSV (*.csv)",))
+def saving(window, title: str, filters, name: str) -> QFileDialog:
+    """A dialog for a file to be written, not yet open."""
+    dialog = _dialog(window, title, QFileDialog.FileMode.AnyFile, filters)
     dialog.setAcceptMode(QFileDialog.AcceptMode.AcceptSave)
-    dialog.selectFile("regions.csv")
+    dialog.selectFile(name)
+    return dialog
+
+
+def export_regions(window) -> None:
+    dialog = saving(window, "Export the regions table", ("CSV (*.csv)",), "regions.csv")
     dialog.fileSelected.connect(lambda chosen: write_regions(window, _ending(Path(chosen), ".csv")))
     dialog.open()
 

@@ -12,6 +12,7 @@ from PySide6.QtWidgets import QComboBox, QFormLayout, QHBoxLayout, QLabel, QLine
 
 from fieldview.compute.units import Units
 from fieldview.gui.panels.base import label, set_property
+from fieldview.gui.panels.switch import Switch
 from fieldview.publish import wording
 
 HIDDEN = ("step", "on", "shape", "name", "colour")
@@ -157,6 +158,32 @@ class _Numbers(_Entry):
         self.finished(value)
 
 
+class _Switch(_Entry):
+    def __init__(self, finished):
+        super().__init__(finished)
+        box = Switch()
+        box.clicked.connect(finished)
+        self.add(box)
+
+    def show_value(self, value):
+        self.parts[0].setChecked(bool(value))
+
+
+class _Words(_Entry):
+    """Several words with commas between them."""
+
+    def __init__(self, finished):
+        super().__init__(finished)
+        line = QLineEdit()
+        line.editingFinished.connect(
+            lambda: finished(tuple(word.strip() for word in line.text().split(",") if word.strip()))
+        )
+        self.add(line)
+
+    def show_value(self, value):
+        self.parts[0].setText(", ".join(value))
+
+
 class _Text(_Entry):
     def __init__(self, finished, optional: bool):
         super().__init__(finished)
@@ -196,6 +223,10 @@ def _entry_for(info, finished) -> _Entry | None:
     if pairs:
         inner_optional = any(type(None) in _alternatives(a) for a in get_args(pairs[0]))
         return _Numbers(finished, 2, optional or inner_optional, False, float in options)
+    if bool in options:
+        return _Switch(finished)
+    if any(get_origin(o) is tuple and get_args(o) == (str, ...) for o in options):
+        return _Words(finished)
     if int in options or float in options:
         return _Numbers(finished, 1, optional, float not in options, False)
     if str in options:

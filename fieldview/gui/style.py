@@ -37,6 +37,7 @@ QStatusBar QLabel {{ color: {muted}; font-size: {small}px; padding: 0 8px; }}
 QSplitter::handle {{ background: {hairline}; }}
 QLabel[role="heading"] {{ color: {accent}; font-weight: bold; }}
 QLabel[role="muted"] {{ color: {muted}; font-size: {small}px; }}
+QLabel[role="attention"] {{ color: {attention}; font-weight: 600; }}
 QLabel[role="history"] {{ color: {filled}; font-size: {small}px; }}
 QLabel[role="title"] {{ font-size: 20px; font-weight: bold; }}
 QWidget[role="panel"], QScrollArea[role="panel"] {{ background: {panel}; }}

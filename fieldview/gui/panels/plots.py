@@ -59,10 +59,9 @@ class Plot(pg.PlotWidget):
         if spread is not None and np.isfinite(spread).any():
             band = QColor(colour)
             band.setAlphaF(0.22)
-            edges = [
-                pg.PlotDataItem(x, y + sign * np.asarray(spread, float), pen=None, connect="finite")
-                for sign in (1, -1)
-            ]
+            # a data item without a pen has no path, and its band would be nothing
+            spread = np.asarray(spread, float)
+            edges = [pg.PlotCurveItem(x, y + sign * spread, connect="finite") for sign in (1, -1)]
             self.addItem(pg.FillBetweenItem(*edges, brush=band))
         pen = pg.mkPen(colour, width=width)
         if dash:

@@ -1,0 +1,1 @@
+"""Sheets on the whole run, each filled in the background: check, time, statistics, modes, choices."""
