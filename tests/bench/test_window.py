@@ -239,3 +239,43 @@ def report_and_check(times: dict[str, list[float]], name: str, most: float) -> N
     ratio = medians[name] / medians["bare"]
     print(f"{name}: {medians[name] * 1e3:.1f} ms against {medians['bare'] * 1e3:.1f} ms, ratio {ratio:.2f}")
     assert ratio <= most
+
+
+EMPTY_PLOT = """
+import pyqtgraph as pg
+app = pg.mkQApp()
+plot = pg.PlotWidget()
+plot.resize(1280, 720)
+plot.show()
+app.processEvents()
+plot.close()
+"""
+
+OUR_WINDOW = """
+from fieldview.gui.app import create_window
+window = create_window()
+window.resize(1280, 720)
+window.show()
+from PySide6.QtWidgets import QApplication
+QApplication.processEvents()
+window.close()
+"""
+
+
+def test_the_window_is_up_within_twice_an_empty_plot(tmp_path):
+    """Whole processes: importing, making the window, showing it once."""
+    import os
+    import subprocess
+    import sys
+
+    places = {f"XDG_{name}_HOME": str(tmp_path) for name in ("CONFIG", "STATE", "DATA", "CACHE")}
+    environment = {**os.environ, "QT_QPA_PLATFORM": "offscreen", **places}
+    times: tuple[list, list] = ([], [])
+    for _ in range(7):
+        for kept, script in zip(times, (OUR_WINDOW, EMPTY_PLOT), strict=True):
+            start = time.perf_counter()
+            subprocess.run([sys.executable, "-c", script], check=True, env=environment, capture_output=True)
+            kept.append(time.perf_counter() - start)
+    ours, plot = (statistics.median(kept) for kept in times)
+    print(f"window up: {1e3 * ours:.0f} ms against {1e3 * plot:.0f} ms, ratio {ours / plot:.2f}")
+    assert ours <= 2 * plot
