@@ -9,14 +9,17 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
-import scipy.sparse as sp
 
 from fieldview.compute.grid import Grid
 from fieldview.compute.lines import Line
 from fieldview.compute.stencil_covariance import noise_gain
 from fieldview.compute.stencils import SCHEMES, Scheme, across_weights, scheme_named
+
+if TYPE_CHECKING:
+    import scipy.sparse as sp
 
 __all__ = ["SCHEMES", "Gradient", "combination", "derivative", "derivative_rows", "gradient", "noise_gain"]
 
@@ -202,6 +205,8 @@ def _rows(line: Line, rule: Scheme, valid: np.ndarray, nodes: np.ndarray) -> sp.
         if open_.size == 0:
             break
     entries = (np.concatenate(weights), (np.concatenate(rows), np.concatenate(columns)))
+    import scipy.sparse as sp
+
     return sp.csr_array(entries, shape=(nodes.size, valid.size))
 
 

@@ -6,14 +6,17 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field, fields, replace
 from enum import IntEnum
 from types import MappingProxyType
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from fieldview.compute.error_model import ErrorModel
 from fieldview.compute.errors import InputError
 from fieldview.compute.grid import Grid
-from fieldview.compute.linear import LinearMap
 from fieldview.compute.units import METRIC, Units
+
+if TYPE_CHECKING:
+    from fieldview.compute.linear import LinearMap
 
 COMPONENTS = ("u", "v", "w")
 

@@ -7,10 +7,12 @@ alike to u, v and w. Weights of a linear functional travel the other way, throug
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Protocol
+from typing import TYPE_CHECKING, Protocol
 
 import numpy as np
-import scipy.sparse as sp
+
+if TYPE_CHECKING:
+    import scipy.sparse as sp
 
 
 class LinearMap(Protocol):
@@ -66,6 +68,8 @@ class MeanRemoval:
         return weights - self.share * weights.sum()
 
     def rows(self, nodes):
+        import scipy.sparse as sp
+
         eye = sp.csr_array(
             (np.ones(len(nodes)), (np.arange(len(nodes)), nodes)), shape=(len(nodes), self.share.size)
         )

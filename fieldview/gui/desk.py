@@ -275,7 +275,7 @@ class Desk(QObject):
             if self.after_saving is not None:
                 follow, self.after_saving = self.after_saving, None
                 follow()
-        elif answer.kind.startswith("study."):
+        elif answer.kind.startswith("study.") or answer.kind == "warm":
             return  # the sheet that asked shows it
         elif answer.kind == "store":
             run = self.picture.session.run.model_copy(update={"store": answer.value.name})

@@ -29,17 +29,25 @@ def icon(name: str, theme: Theme) -> QIcon:
     return made
 
 
+@lru_cache(maxsize=1024)
 def drawing(name: str, colour: str, size: int) -> QPixmap:
     """One drawing in one colour and size; an empty one where the file is missing."""
     from PySide6.QtSvg import QSvgRenderer
 
     pixmap = QPixmap(size, size)
     pixmap.fill(Qt.GlobalColor.transparent)
-    path = shipped_folder("icons") / f"{name}.svg"
-    if path.is_file():
-        text = path.read_text(encoding="utf-8").replace("currentColor", colour)
+    text = _text_of(name)
+    if text:
+        text = text.replace("currentColor", colour)
         painter = QPainter(pixmap)
         painter.setRenderHint(QPainter.RenderHint.Antialiasing)
         QSvgRenderer(QByteArray(text.encode())).render(painter, QRectF(0, 0, size, size))
         painter.end()
     return pixmap
+
+
+@lru_cache(maxsize=128)
+def _text_of(name: str) -> str:
+    """The drawing as it is on disk; nothing where it is missing."""
+    path = shipped_folder("icons") / f"{name}.svg"
+    return path.read_text(encoding="utf-8") if path.is_file() else ""

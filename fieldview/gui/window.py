@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from PySide6.QtCore import QByteArray, QEvent, QSize, Qt
+from PySide6.QtCore import QByteArray, QEvent, QSize, Qt, QTimer
 from PySide6.QtGui import QGuiApplication, QKeyEvent
 from PySide6.QtWidgets import (
     QApplication,
@@ -16,13 +16,14 @@ from PySide6.QtWidgets import (
     QWidget,
 )
 
-from fieldview.gui import places, theme
+from fieldview.gui import places, theme, work
 from fieldview.gui.actions import Actions
 from fieldview.gui.canvas.showing import Showing
 from fieldview.gui.canvas.view import Canvas
 from fieldview.gui.commands import all_commands
 from fieldview.gui.desk import Desk
 from fieldview.gui.icons import icon
+from fieldview.gui.jobs import LATER
 from fieldview.gui.panels.banner import Banner
 from fieldview.gui.panels.drawer import Drawer
 from fieldview.gui.panels.ledger import Ledger
@@ -38,6 +39,9 @@ from fieldview.gui.style import style_sheet
 from fieldview.gui.tools import TOOLS
 from fieldview.gui.tools.picking import Pick
 from fieldview.shipped import shipped_folder
+
+WARM_UP_MS = 50
+"""After the window is up, before the libraries that the first region needs are imported."""
 
 WORKING_KEYS = (Qt.Key.Key_Return, Qt.Key.Key_Enter, Qt.Key.Key_Escape, Qt.Key.Key_Backspace)
 
@@ -58,6 +62,10 @@ class MainWindow(QMainWindow):
         self._asked = False
         self._picking: Pick | None = None
         self._waiting: list[Path] = []
+        self._warm, self._warming = False, QTimer(self)
+        self._warming.setSingleShot(True)
+        self._warming.setInterval(WARM_UP_MS)
+        self._warming.timeout.connect(self._warm_up)
         self.theme = theme.of_desktop()
         self.actions_table = Actions(self, all_commands())
         self._build()
@@ -70,6 +78,15 @@ class MainWindow(QMainWindow):
         self._redraw()
         self._offer_lost()
         self.destroyed.connect(self.desk.jobs.close)
+
+    def _warm_up(self) -> None:
+        self.desk.jobs.submit("warm", work.warm_up, lane="warm", urgency=LATER)
+
+    def showEvent(self, event):
+        super().showEvent(event)
+        if not self._warm:
+            self._warm = True
+            self._warming.start()
 
     # -- for tests and tools -------------------------------------------------------------------------
 

@@ -120,6 +120,14 @@ def mean_over_run(bench: Any, as_of: int | None, report: Report) -> Field:
     return mean_of(frames())
 
 
+def warm_up() -> None:
+    """Import what the first drawn region would otherwise wait for on the window's own thread."""
+    from importlib import import_module
+
+    for name in ("scipy.sparse", "scipy.ndimage", "shapely", "contourpy", "fieldview.compute.region"):
+        import_module(name)
+
+
 def measure_quickly(session: Session, field: Field, prepared: Any, wanted) -> list[Measured]:
     """The numbers that follow a drag: the same functions as the full ones, without the costly parts."""
     from fieldview.compute.region import quick_numbers
