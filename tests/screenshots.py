@@ -50,12 +50,44 @@ def take_all(folder: Path) -> None:
                 for state, change in STATES.items():
                     change(window)
                     take(window, folder / f"{session.name.split('.')[0]}_{state}_{stem}.png")
+                if session.name.startswith("fin_wake"):
+                    take_sheets(window, folder, stem)
             window.desk.update(saved=window.session)
             window.close()
             window.deleteLater()
 
 
-def take(window, path: Path) -> None:
+SHEETS = (
+    "study.check",
+    "study.over_time",
+    "study.statistics",
+    "study.correlation",
+    "study.phase",
+    "study.modes",
+    "study.compare",
+    "study.choices",
+    "output.figure",
+    "sheet.uncertainty",
+    "sheet.calibration",
+)
+
+
+def take_sheets(window, folder: Path, stem: str) -> None:
+    """The sheets, each with what comes of its Start."""
+    from PySide6.QtGui import QAction
+
+    from fieldview.gui.sheets import Sheet
+
+    for id in SHEETS:
+        window.findChild(QAction, id).trigger()
+        sheet = next(sheet for sheet in window.findChildren(Sheet) if sheet.isVisible())
+        if hasattr(sheet, "begin") and id != "output.figure":
+            sheet.begin.click()
+        take(window, folder / f"{id.replace('.', '_')}_{stem}.png", shown=sheet)
+        sheet.close()
+
+
+def take(window, path: Path, shown=None) -> None:
     """Wait until everything is drawn, then take the picture."""
     from PySide6.QtWidgets import QApplication
 
@@ -65,7 +97,7 @@ def take(window, path: Path) -> None:
         QApplication.processEvents()
         time.sleep(0.005)
     QApplication.processEvents()
-    window.grab().save(str(path))
+    (shown or window).grab().save(str(path))
     print(path)
 
 

@@ -133,6 +133,63 @@ shows a
 mistake.</p>
 """
 
+_RUN_CHECK = """
+<p>Every frame is looked at once, after the ledger. Sigma is found in independent ways: from differences
+between neighbours, between frames, and from the divergence of what should have none; ways that disagree are
+said. The limits are common practice and stand in every verdict.</p>
+<p><b>Peak locking</b> (pixel runs): how unevenly the fractional parts of the displacements are spread.
+<b>Stuck vectors</b> move less than their noise makes them.</p>
+"""
+
+_OVER_TIME = """
+<p><b>Spectrum</b>: Welch's method, Lomb–Scargle where frames are missing; the band holds 95 % for each
+value. <span class="source">Welch (1967) IEEE Trans. AU 15:70–73; Scargle (1982) Astrophys. J.
+263:835–853.</span> <b>Dominant frequency</b>: the sinusoid that fits best, with the uncertainty that the
+rest leaves. <b>Autocorrelation</b>: its integral up to the first zero is the time scale T; N frames over a
+time Θ are worth N<sub>eff</sub> = Θ / 2T independent ones. <b>Strouhal number</b>: f L / U with the
+session's reference values and their uncertainties.</p>
+"""
+
+_STATISTICS = """
+<p>One pass over the frames, filled vectors left out. Each map has its standard uncertainty from the
+effective number of independent frames. Stresses hold the noise's variance too, unless it is taken off.
+<span class="source">JCGM 100:2008, 4.2.</span></p>
+"""
+
+_MODES = """
+<p>Proper orthogonal decomposition by snapshots; gaps are filled by the modes themselves. <span
+class="source">Sirovich (1987) Q. Appl. Math. 45:561–571; Everson &amp; Sirovich (1995) J. Opt. Soc. Am. A
+12:1657–1664.</span> Modes whose energies are closer than their uncertainty are mixed with each other. <span
+class="source">North et al. (1982) Mon. Weather Rev. 110:699–706.</span></p>
+"""
+
+_CORRELATION = """
+<p>Correlation coefficient of a component at one place with that at every other node. Its integral outward
+to the first zero is the integral length; where the grid or a gap ends before, that is a lower bound.</p>
+"""
+
+_PHASE = """
+<p>Frames are sorted into bins of the cycle, by a channel or by a frequency and their times. A bin of width
+b keeps sin(πb)/(πb) of a variation once per cycle; jitter smears more. What is kept stands in the
+table.</p>
+"""
+
+_CHOICES = """
+<p>The region under every combination of defensible choices. The scatter is what another analyst might have
+found; it stands beside the measurement's uncertainty and is no part of it.</p>
+"""
+
+_COMPARISON = """
+<p>Difference of two frames with u² = u₁² + u₂² for random errors. With the same calibration in both,
+systematic errors drop out as far as they are equal. Of normal errors 4.6 % of the nodes differ by more than
+2 u.</p>
+"""
+
+_FIGURE = """
+<p>One column of a journal's page is about 85 mm wide, two are 175 mm. Fonts are embedded; the same session
+gives the same bytes. The caption beside the file says what was done and how sure the numbers are.</p>
+"""
+
 PAGES: dict[str, tuple[str, str]] = {
     "canvas": ("Canvas and tools", _CANVAS),
     "ledger": ("Ledger", _LEDGER),
@@ -144,4 +201,13 @@ PAGES: dict[str, tuple[str, str]] = {
     "uncertainty_sheet": ("Uncertainty", _UNCERTAINTY),
     "calibration_sheet": ("Calibration and axes", _CALIBRATION),
     "reading_sheet": ("Reading files", _READING),
+    "run_check": ("Run check", _RUN_CHECK),
+    "over_time_sheet": ("Over time", _OVER_TIME),
+    "statistics_sheet": ("Statistics over the run", _STATISTICS),
+    "modes_sheet": ("Modes of the run", _MODES),
+    "correlation_sheet": ("Two-point correlation", _CORRELATION),
+    "phase_sheet": ("Phase averages", _PHASE),
+    "choices_sheet": ("How much is the analyst?", _CHOICES),
+    "comparison_sheet": ("Compare frames", _COMPARISON),
+    "figure_sheet": ("Figure", _FIGURE),
 }

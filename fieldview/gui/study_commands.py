@@ -28,6 +28,8 @@ def study_commands() -> tuple[Command, ...]:
         Command("study.statistics", "Statistics over the run …", "Measure", statistics, enabled=has_frames),
         Command("study.correlation", "Two-point correlation …", "Measure", correlation, enabled=has_frames),
         Command("study.modes", "Modes of the run …", "Measure", modes, enabled=has_frames),
+        Command("study.phase", "Phase averages …", "Measure", phase, enabled=has_frames),
+        Command("study.compare", "Compare frames …", "Measure", compare, enabled=has_field),
         Command("study.choices", "How much is the analyst? …", "Measure", choices, enabled=has_regions),
     )  # fmt: skip
 
@@ -70,6 +72,18 @@ def modes(window) -> None:
     from fieldview.gui.studies.modes import ModesSheet
 
     ModesSheet(window).show()
+
+
+def phase(window) -> None:
+    from fieldview.gui.studies.phase import PhaseSheet
+
+    PhaseSheet(window).show()
+
+
+def compare(window) -> None:
+    from fieldview.gui.studies.comparison import ComparisonSheet
+
+    ComparisonSheet(window).show()
 
 
 def choices(window) -> None:

@@ -192,3 +192,46 @@ def test_the_preview_is_a_picture(pulse, qtbot):
 
     made = figure_preview(pulse.desk.bench, pulse.session, FigureSettings(), lambda share: None)
     assert QImage.fromData(made).width() > 200
+
+
+def test_phase_averages_need_their_source_and_show_every_bin(pulse, qtbot):
+    sheet = opened(pulse, "study.phase")
+    started(pulse, qtbot, sheet)
+    assert "State a frequency" in sheet.problem.text()
+    entry = sheet.form._entries["frequency"].parts[0]
+    entry.setFocus()
+    entry.selectAll()
+    QTest.keyClicks(entry, "2")
+    QTest.keyClick(entry, Qt.Key.Key_Return)
+    assert pulse.session.phase.frequency == 2.0
+    started(pulse, qtbot, sheet)
+    assert [row[2].text for row in sheet.rows.rows] == ["2"] * 8
+    wanted = Workbench(pulse.session).field("phase:8:0")
+    np.testing.assert_array_equal(sheet._found.fields[0].u, wanted.u)
+    assert "core: Γ" in sheet.told.toPlainText() and "phase 0°" in sheet.told.toPlainText()
+    sheet.shown.setValue(4)
+    assert "phase 180°" in sheet.told.toPlainText()
+
+
+def test_frames_are_compared(pulse, qtbot, pulse_file):
+    sheet = opened(pulse, "study.compare")
+    sheet.frame.setText("4")
+    started(pulse, qtbot, sheet)
+    first, second = (Workbench(load_session(pulse_file)).field(frame) for frame in (0, 4))
+    np.testing.assert_array_equal(sheet._found.difference.u, second.u - first.u)
+    assert sheet.rows.rows[0][0].text == "core" and sheet.rows.rows[0][5].text == "yes"
+    assert "beyond 2 u" in sheet.told.toPlainText()
+    sheet.take(str(pulse_file))
+    sheet.frame.setText("0")
+    started(pulse, qtbot, sheet)
+    assert sheet.rows.rows[0][5].text == "no" and sheet.source.text() == "pulse.session.json"
+    sheet.frame.setText("99")
+    started(pulse, qtbot, sheet)
+    assert "the run has 16 frames" in sheet.problem.text()
+
+
+def test_help_is_there_for_every_sheet(pulse, qtbot):
+    from fieldview.gui.help import topic_of
+
+    sheet = opened(pulse, "study.compare")
+    assert topic_of(sheet.frame) == "comparison_sheet"

@@ -121,6 +121,62 @@ def correlation(bench: Any, session: Session, place: tuple, component: str, repo
     return TwoPointMap(grid, found.coefficient(), int(found.count[found.node]), at, lengths)
 
 
+@dataclass(frozen=True, eq=False)
+class Phases:
+    """The bins of the cycle, the average of each (None where no frame falls into it) and its regions."""
+
+    rows: list[dict]
+    fields: list
+    numbers: list[list[tuple[str, str, str]]]
+    left_out: int
+
+
+def phases(bench: Any, session: Session, bins: int, report: Report) -> Phases:
+    from fieldview.session.phase import phase_averages
+
+    bench = bench.updated(session)
+    tick = _ticks(report, len(bench.run))
+    found = phase_averages(bench, bench.phase_rule(bins), on_frame=tick)
+    rows = found.rows()
+    fields = [found.field(number) if row["frames"] else None for number, row in enumerate(rows)]
+    numbers = [[] if field is None else _region_words(session, field) for field in fields]
+    return Phases(rows, fields, numbers, found.left_out)
+
+
+def _region_words(session: Session, field) -> list[tuple[str, str, str]]:
+    """Name, symbol and first number of every region on a field."""
+    from fieldview.publish import wording
+    from fieldview.publish.region_numbers import symbol
+    from fieldview.session.measure import NUMBERS, measure_field
+
+    said = []
+    for name, numbers in measure_field(session, field).items():
+        for key, attribute in NUMBERS.items():
+            number = getattr(numbers, attribute)
+            if number is not None:
+                shown = wording.plus_minus(number.value, number.combined, number.unit)
+                said.append((name, symbol(key), shown))
+                break
+    return said
+
+
+def comparison(
+    bench: Any, session: Session, shown: int, other: Path | None, frame: str, shared: bool, report: Report
+):
+    """The other frame less the shown one."""
+    from fieldview.publish.study_reports import one_frame
+    from fieldview.session.comparison import compare
+    from fieldview.session.replay import Workbench
+    from fieldview.session.store import load_session
+
+    own = bench.updated(session)
+    report(0.1)
+    theirs = own if other is None else Workbench(load_session(other))
+    second = theirs.field(one_frame(theirs, frame))
+    report(0.7)
+    return compare(session, own.field(shown), second, shared_calibration=shared)
+
+
 def choices(bench: Any, session: Session, region: str, frame: int, report: Report):
     from fieldview.publish.studies import choices_study
 
