@@ -11,7 +11,8 @@ import numpy as np
 
 from fieldview.compute.errors import InputError
 from fieldview.files.writing import write_whole
-from fieldview.publish.figures.maps import Panel, colour_scale, drawn, frame_words, panels_of
+from fieldview.publish.figures.maps import drawn
+from fieldview.publish.figures.panels import Panel, colour_scale, frame_words, panels_of
 from fieldview.publish.figures.paper import style
 from fieldview.publish.measuring import Progress
 from fieldview.session.figures import FigureSettings

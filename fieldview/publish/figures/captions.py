@@ -11,7 +11,7 @@ from fieldview.compute.region import prepare
 from fieldview.compute.stencils import SCHEMES
 from fieldview.publish import wording
 from fieldview.publish.figures.arrows import arrows_of
-from fieldview.publish.figures.maps import frame_words, panels_of
+from fieldview.publish.figures.panels import frame_words, panels_of
 from fieldview.publish.figures.regions import number_of, number_text
 from fieldview.session.figures import FigureSettings
 from fieldview.session.ledger import sentence
