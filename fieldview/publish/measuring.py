@@ -11,6 +11,7 @@ from pathlib import Path
 from typing import IO
 
 from fieldview.compute.errors import InputError
+from fieldview.publish.remarks import Remarks
 from fieldview.publish.sharing import Share, bench_of, in_order, portions
 from fieldview.publish.tables import csv_lines, text_lines
 from fieldview.session.frames import left_out
@@ -54,15 +55,8 @@ def measurement(
         raise InputError(f"{path}: has no regions to measure; draw one in the window or add it under regions")
     bench = Workbench(session)
     chosen = chosen_frames(bench, frames)
-    said: list[str] = []
-
-    def remark(sentence: str) -> None:
-        said.append(sentence)
-        say(sentence)
-
-    for sentence in bench.changed_sources():
-        remark(sentence)
-    rows = measured_rows(bench, chosen, remark, executor, progress=progress, strict=strict)
+    remarks = Remarks(say, bench)
+    rows = measured_rows(bench, chosen, remarks, executor, progress=progress, strict=strict)
     text = tempfile.TemporaryFile("w+", encoding="utf-8", newline="")  # noqa: SIM115 - handed on
     try:
         for line in FORMATS[format](path.name, rows):
@@ -71,7 +65,7 @@ def measurement(
         text.close()
         raise
     text.seek(0)
-    return Measurement(text, bool(said))
+    return Measurement(text, bool(remarks))
 
 
 def measured_rows(

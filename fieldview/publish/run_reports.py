@@ -15,6 +15,7 @@ from fieldview.compute.lag_window import LAGS
 from fieldview.publish import wording
 from fieldview.publish.maps import Values, check_ending, write_maps
 from fieldview.publish.measuring import Progress
+from fieldview.publish.remarks import Remarks
 from fieldview.publish.sharing import Share, bench_of, in_order, portions
 from fieldview.publish.tables import plain_text
 from fieldview.session.check import RunCheck, Seen, run_check, seen
@@ -36,14 +37,9 @@ def check_report(
 ) -> tuple[str, bool]:
     """The run check of a session as text, and whether there was anything to remark about the sources."""
     bench = Workbench(load_session(path))
-    remarks = said_changes(bench, say)
-
-    def remark(sentence: str) -> None:
-        remarks.append(sentence)
-        say(sentence)
-
+    remarks = Remarks(say, bench)
     numbers = frame_numbers(bench, frames)
-    found = checked(bench, numbers, progress=progress, remark=remark, executor=executor)
+    found = checked(bench, numbers, progress=progress, remark=remarks, executor=executor)
     if format == "json":
         told = {"session": path.name, "findings": found.rows(), "frames": found.frame_rows()}
         return json.dumps(told, indent=1, ensure_ascii=False, allow_nan=False) + "\n", bool(remarks)
@@ -104,18 +100,13 @@ def statistics_report(
     """
     check_ending(maps)
     bench = Workbench(load_session(path))
-    remarks = said_changes(bench, say)
-
-    def remark(sentence: str) -> None:
-        remarks.append(sentence)
-        say(sentence)
-
+    remarks = Remarks(say, bench)
     run = statistics_over(
         bench,
         frame_numbers(bench, frames),
         filled=filled,
         progress=progress,
-        remark=remark,
+        remark=remarks,
         executor=executor,
     )
     rows = run.rows(subtract_noise=subtract_noise, points=points)
@@ -197,14 +188,6 @@ def _map_values(run: RunStatistics, subtract_noise: bool) -> Values:
         if entry.uncertainty is not None:
             values[f"{name}_uncertainty"] = (entry.uncertainty, unit)
     return values
-
-
-def said_changes(bench: Workbench, say) -> list[str]:
-    """The sources that have changed since the session was saved, said and returned."""
-    found = bench.changed_sources()
-    for sentence in found:
-        say(sentence)
-    return found
 
 
 def flat(row: dict) -> dict:

@@ -14,7 +14,8 @@ from fieldview.publish import wording
 from fieldview.publish.maps import check_ending, write_maps
 from fieldview.publish.measuring import Progress
 from fieldview.publish.region_numbers import symbol
-from fieldview.publish.run_reports import csv_text, flat, said_changes
+from fieldview.publish.remarks import Remarks
+from fieldview.publish.run_reports import csv_text, flat
 from fieldview.publish.studies import choices_study
 from fieldview.session.choices import TITLES, Study
 from fieldview.session.comparison import Comparison, compare
@@ -58,7 +59,7 @@ def choices_report(
 ) -> tuple[str, bool]:
     """The choices study of one region, or of all, on one frame; and whether there was anything to remark."""
     bench = Workbench(load_session(path))
-    remarks = said_changes(bench, output.say)
+    remarks = Remarks(output.say, bench)
     chosen = one_frame(bench, frame)
     names = [region] if region is not None else [entry.name for entry in bench.session.regions]
     if not names:
@@ -123,7 +124,7 @@ def comparison_report(
     """Two frames side by side; with ``maps`` the difference and its uncertainty go to that file."""
     check_ending(maps)
     benches = [Workbench(load_session(path)) for path in (first, second)]
-    remarks = [sentence for bench in benches for sentence in said_changes(bench, output.say)]
+    remarks = Remarks(output.say, *benches)
     numbers = [one_frame(bench, spec) for bench, spec in zip(benches, frames, strict=True)]
     fields = [bench.field(frame) for bench, frame in zip(benches, numbers, strict=True)]
     found = compare(
@@ -187,7 +188,7 @@ def comparison_lines(found: Comparison) -> Iterator[str]:
 def repeats_report(paths: Sequence[Path], frames: str, output: Output) -> tuple[str, bool]:
     """Scatter of every region number over sessions, or over the frames of one, against what is stated."""
     benches = {path: Workbench(load_session(path)) for path in paths}
-    remarks = [sentence for bench in benches.values() for sentence in said_changes(bench, output.say)]
+    remarks = Remarks(output.say, *benches.values())
     if len(benches) != len(paths):
         raise InputError("a session is named twice; a repeat counts once")
     asked: list[tuple[str, Workbench, Frame]] = []

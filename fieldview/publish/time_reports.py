@@ -15,13 +15,14 @@ from fieldview.compute.time_series import autocorrelation
 from fieldview.publish import wording
 from fieldview.publish.maps import Values, check_ending, write_maps
 from fieldview.publish.measuring import Progress
-from fieldview.publish.run_reports import csv_text, flat, said_changes
+from fieldview.publish.remarks import Remarks
+from fieldview.publish.run_reports import csv_text, flat
 from fieldview.session.modes import run_modes, two_point
 from fieldview.session.phase import phase_averages
 from fieldview.session.replay import Workbench
 from fieldview.session.statistics import frame_numbers
 from fieldview.session.store import load_session
-from fieldview.session.traces import Trace, probe_trace, region_trace, strouhal_options, trace_row
+from fieldview.session.traces import TITLES, Trace, probe_trace, region_trace, strouhal_options, trace_row
 
 FORMATS = ("table", "csv", "json")
 
@@ -50,7 +51,7 @@ class Request:
     def begin(self, what: str) -> tuple[Workbench, list[int], Callable[[int], None], list[str]]:
         """The workbench, the frames' numbers, what is to be told of every frame done, and the remarks."""
         bench = Workbench(load_session(self.path))
-        remarks = said_changes(bench, self.say)
+        remarks = Remarks(self.say, bench)
         numbers = frame_numbers(bench, self.frames)
         ticks = iter(self.progress(numbers, what, len(numbers)))
         next(ticks, None)
@@ -150,12 +151,7 @@ def _correlation(trace: Trace) -> dict | None:
 def _series_lines(row: dict, trace: Trace) -> Iterator[str]:
     yield f"{row['label']}: {row['frames']} frames, {row['missing']} without a value"
     yield ""
-    for key, title in (
-        ("mean", "mean"),
-        ("deviation", "standard deviation"),
-        ("integral_time", "integral time scale"),
-        ("dominant_frequency", "dominant frequency"),
-    ):
+    for key, title in TITLES.items():
         if key in row:
             part = row[key]
             yield f"  {title:<22} {wording.plus_minus(part['value'], part['uncertainty'], part['unit'])}"

@@ -15,7 +15,8 @@ from fieldview.compute.errors import InputError
 from fieldview.files.writing import write_whole
 from fieldview.publish.figures.captions import uncertainty_statement
 from fieldview.publish.measuring import Progress, measured_rows
-from fieldview.publish.run_reports import checked, flat, said_changes, statistics_over
+from fieldview.publish.remarks import Remarks
+from fieldview.publish.run_reports import checked, flat, statistics_over
 from fieldview.publish.tables import plain_text, table_rows
 from fieldview.session.replay import Workbench
 from fieldview.session.statistics import frame_numbers
@@ -52,18 +53,13 @@ def write_workbook(
     if out.suffix.lower() != ".xlsx":
         raise InputError(f"{out}: the ending of a workbook must be .xlsx")
     bench = Workbench(load_session(path))
-    remarks = said_changes(bench, say)
-
-    def remark(sentence: str) -> None:
-        remarks.append(sentence)
-        say(sentence)
-
+    remarks = Remarks(say, bench)
     numbers = frame_numbers(bench, frames)
-    found = checked(bench, numbers, progress=progress, remark=remark, executor=executor)
-    run = statistics_over(bench, numbers, progress=progress, remark=remark, executor=executor)
+    found = checked(bench, numbers, progress=progress, remark=remarks, executor=executor)
+    run = statistics_over(bench, numbers, progress=progress, remark=remarks, executor=executor)
     sheets = [Sheet("about", _about(path, bench, numbers))]
     if bench.session.regions:
-        rows = measured_rows(bench, numbers, remark, executor, progress=progress)
+        rows = measured_rows(bench, numbers, remarks, executor, progress=progress)
         sheets.append(Sheet("regions", table_rows(rows)))
     sheets += [
         Sheet("run check", _of_dicts(found.rows())),

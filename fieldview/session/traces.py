@@ -250,6 +250,15 @@ def trace_row(
     return row
 
 
+TITLES = {
+    "mean": "mean",
+    "deviation": "standard deviation",
+    "integral_time": "integral time scale",
+    "dominant_frequency": "dominant frequency",
+}
+"""Parts of `trace_row` that are a value with its uncertainty, in words."""
+
+
 def strouhal_options(bench, trace: Trace) -> dict:
     """What `trace_row` needs for a Strouhal number on the session's reference length and velocity, if any."""
     stated = bench.session.reference

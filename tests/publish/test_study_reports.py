@@ -5,7 +5,6 @@ import json
 import numpy as np
 import pytest
 
-from fieldview import cli
 from fieldview.session.store import save_session
 from tests.session.runs import CIRCLE, SIGMA, edited, vortex_frames
 
@@ -25,15 +24,6 @@ def paths(tmp_path_factory):
         found.append(folder / "v.session.json")
         save_session(session, found[-1])
     return found
-
-
-@pytest.fixture
-def run(capfd):
-    def call(*arguments) -> tuple[int, str, str]:
-        status = cli.run([str(argument) for argument in arguments])
-        return status, *capfd.readouterr()
-
-    return call
 
 
 def test_choices(run, paths):

@@ -6,7 +6,6 @@ import numpy as np
 import pytest
 import xarray
 
-from fieldview import cli
 from fieldview.session.store import load_session, save_session
 from tests.session.runs import CENTRE, FREQUENCY, GAMMA, PHASES, edited, pulsing_frames
 
@@ -21,15 +20,6 @@ def session_path(tmp_path_factory):
     session = edited(pulsing_frames(folder, CYCLES), reference=reference, phase={"frequency": FREQUENCY})
     save_session(session, folder / "pulse.session.json")
     return folder / "pulse.session.json"
-
-
-@pytest.fixture
-def run(capfd):
-    def call(*arguments) -> tuple[int, str, str]:
-        status = cli.run([str(argument) for argument in arguments])
-        return status, *capfd.readouterr()
-
-    return call
 
 
 def test_a_region_over_time_gives_back_the_pulse(run, session_path):

@@ -14,6 +14,7 @@ from fieldview.gui.studies import work
 from fieldview.gui.studies.base import StudySheet, choice, told_text
 from fieldview.publish import wording
 from fieldview.publish.region_numbers import symbol
+from fieldview.session.traces import TITLES
 
 PAGES = ("series", "spectrum", "autocorrelation", "convergence")
 
@@ -108,12 +109,7 @@ class OverTimeSheet(StudySheet):
 def _told(found: work.Series) -> list[str]:
     row = found.row
     lines = [f"{row['label']}: {row['frames']} frames, {row['missing']} without a value."]
-    for key, title in (
-        ("mean", "mean"),
-        ("deviation", "standard deviation"),
-        ("integral_time", "integral time scale"),
-        ("dominant_frequency", "dominant frequency"),
-    ):
+    for key, title in TITLES.items():
         if key in row:
             part = row[key]
             lines.append(f"{title} {wording.plus_minus(part['value'], part['uncertainty'], part['unit'])}")

@@ -9,9 +9,10 @@ import fieldview
 from fieldview.compute.errors import InputError
 from fieldview.files.writing import write_whole
 from fieldview.publish.measuring import Progress, measured_rows
+from fieldview.publish.remarks import Remarks
 from fieldview.publish.report import gathering
 from fieldview.publish.report.methods import CAUTIONS, methods_of
-from fieldview.publish.run_reports import checked, said_changes
+from fieldview.publish.run_reports import checked
 from fieldview.publish.studies import choices_study
 from fieldview.session.measure import chosen_frames
 from fieldview.session.replay import Frame, Workbench
@@ -76,20 +77,15 @@ def report_text(
     from jinja2 import Environment, PackageLoader, StrictUndefined
 
     session = bench.session
-    remarks = said_changes(bench, say)
-    changed = list(remarks)
-
-    def remark(sentence: str) -> None:
-        remarks.append(sentence)
-        say(sentence)
-
+    remarks = Remarks(say, bench)
+    changed = list(remarks.said)
     shown = _shown(bench, frames)
     field = bench.field(shown[0])
     everything = list(range(len(bench.run)))
-    findings = checked(bench, everything, progress=progress, remark=remark, executor=executor).rows()
+    findings = checked(bench, everything, progress=progress, remark=remarks, executor=executor).rows()
     rows = []
     if session.regions:
-        rows = list(measured_rows(bench, shown, remark, executor, progress=progress))
+        rows = list(measured_rows(bench, shown, remarks, executor, progress=progress))
     studies = []
     if choices:
         studies = [
