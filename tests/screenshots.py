@@ -75,6 +75,7 @@ SHEETS = (
 def take_sheets(window, folder: Path, stem: str) -> None:
     """The sheets, each with what comes of its Start."""
     from PySide6.QtGui import QAction
+    from PySide6.QtWidgets import QApplication
 
     from fieldview.gui.sheets import Sheet
 
@@ -83,6 +84,10 @@ def take_sheets(window, folder: Path, stem: str) -> None:
         sheet = next(sheet for sheet in window.findChildren(Sheet) if sheet.isVisible())
         if hasattr(sheet, "begin") and id != "output.figure":
             sheet.begin.click()
+        preview = getattr(sheet, "preview", None)
+        until = time.monotonic() + 20
+        while preview is not None and preview.pixmap().isNull() and time.monotonic() < until:
+            QApplication.processEvents()
         take(window, folder / f"{id.replace('.', '_')}_{stem}.png", shown=sheet)
         sheet.close()
 
