@@ -80,6 +80,11 @@ class Polygon(_Pointed):
 
     def problem(self) -> str | None:
         """Why the contour has no answer, in words; None where it is sound."""
+        return self._problem
+
+    @cached_property
+    def _problem(self) -> str | None:
+        # the points do not change, and every measurement asks
         import shapely
 
         z = self.vertices
