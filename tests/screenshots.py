@@ -66,6 +66,7 @@ SHEETS = (
     "study.modes",
     "study.compare",
     "study.choices",
+    "study.repeats",
     "output.figure",
     "sheet.uncertainty",
     "sheet.calibration",

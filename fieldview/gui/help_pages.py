@@ -185,6 +185,12 @@ systematic errors drop out as far as they are equal. Of normal errors 4.6 % of t
 2 u.</p>
 """
 
+_REPEATS = """
+<p>Mean, standard deviation and s/√n over the repeats are Type A evaluations. The Birge ratio sets the
+scatter against the stated random uncertainties; honest ones give about 1 ± 1/√(2(n − 1)).
+<span class="source">JCGM 100:2008, 4.2; Birge (1932) Phys. Rev. 40:207–227.</span></p>
+"""
+
 _FIGURE = """
 <p>One column of a journal's page is about 85 mm wide, two are 175 mm. Fonts are embedded; the same session
 gives the same bytes. The caption beside the file says what was done and how sure the numbers are.</p>
@@ -209,5 +215,6 @@ PAGES: dict[str, tuple[str, str]] = {
     "phase_sheet": ("Phase averages", _PHASE),
     "choices_sheet": ("How much is the analyst?", _CHOICES),
     "comparison_sheet": ("Compare frames", _COMPARISON),
+    "repeats_sheet": ("Repeats", _REPEATS),
     "figure_sheet": ("Figure", _FIGURE),
 }

@@ -30,6 +30,7 @@ def study_commands() -> tuple[Command, ...]:
         Command("study.modes", "Modes of the run …", "Measure", modes, enabled=has_frames),
         Command("study.phase", "Phase averages …", "Measure", phase, enabled=has_frames),
         Command("study.compare", "Compare frames …", "Measure", compare, enabled=has_field),
+        Command("study.repeats", "Repeats …", "Measure", repeats, enabled=has_regions),
         Command("study.choices", "How much is the analyst? …", "Measure", choices, enabled=has_regions),
     )  # fmt: skip
 
@@ -84,6 +85,12 @@ def compare(window) -> None:
     from fieldview.gui.studies.comparison import ComparisonSheet
 
     ComparisonSheet(window).show()
+
+
+def repeats(window) -> None:
+    from fieldview.gui.studies.repeats import RepeatsSheet
+
+    RepeatsSheet(window).show()
 
 
 def choices(window) -> None:

@@ -235,3 +235,17 @@ def test_help_is_there_for_every_sheet(pulse, qtbot):
 
     sheet = opened(pulse, "study.compare")
     assert topic_of(sheet.frame) == "comparison_sheet"
+
+
+def test_repeats_are_judged(pulse, qtbot, pulse_file):
+    sheet = opened(pulse, "study.repeats")
+    sheet.frames.setText("0:16:8")
+    started(pulse, qtbot, sheet)
+    assert "give at least 3" in sheet.problem.text()
+    sheet.frames.setText("0:")
+    started(pulse, qtbot, sheet)
+    assert sheet.rows.rows[0][0].text == "core" and sheet.rows.rows[0][6].text == "16"
+    assert "core, Γ: scatters more than stated" in sheet.told.toPlainText(), "the pulse is no repeat"
+    sheet.take([str(pulse_file), str(pulse_file)])
+    started(pulse, qtbot, sheet)
+    assert "scatters less than stated" in sheet.told.toPlainText(), "one and the same run three times"

@@ -177,6 +177,27 @@ def comparison(
     return compare(session, own.field(shown), second, shared_calibration=shared)
 
 
+def repeated(bench: Any, session: Session, others: tuple[Path, ...], frames: str, report: Report) -> list:
+    """Repeats over the frames of this run, or over one frame of this session and others."""
+    from fieldview.publish.study_reports import one_frame
+    from fieldview.session.measure import frame_row
+    from fieldview.session.repeats import repeats
+    from fieldview.session.replay import Workbench
+    from fieldview.session.store import load_session
+
+    own = bench.updated(session)
+    if others:
+        benches = [own, *(Workbench(load_session(path)) for path in others)]
+        asked = [(bench, one_frame(bench, frames or "mean")) for bench in benches]
+    else:
+        asked = [(own, frame) for frame in own.frames(frames or None)]
+    measured = {}
+    for number, (bench, frame) in enumerate(asked):
+        measured[str(number)] = frame_row(bench.session, frame, bench.field(frame))
+        report((number + 1) / len(asked))
+    return repeats(measured)
+
+
 def choices(bench: Any, session: Session, region: str, frame: int, report: Report):
     from fieldview.publish.studies import choices_study
 
