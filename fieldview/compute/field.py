@@ -154,6 +154,17 @@ class Field:
         """bool ndarray (ny, nx): nodes with values, measured or filled."""
         return (self.status == Status.MEASURED) | (self.status == Status.FILLED)
 
+    @property
+    def once_rejected(self) -> np.ndarray:
+        """bool ndarray (ny, nx): nodes whose vector a line rejected, whatever became of them since."""
+        nodes = np.zeros(self.grid.shape, bool)
+        for event in self.events:
+            if event.action == "rejected":
+                nodes |= event.nodes
+            elif event.action == "kept":
+                nodes &= ~event.nodes
+        return nodes
+
     def count(self, status: Status) -> int:
         return int(np.count_nonzero(self.status == status))
 

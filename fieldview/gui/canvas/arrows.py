@@ -123,7 +123,7 @@ class ArrowPainter:
             self._draw(painter, tails[part], velocity[part] * scale.per_speed, pen)
 
     def _paint_rejected(self, painter, lens, field, theme, scale):
-        rejected = (field.status == Status.REJECTED) | _rejected_once(field)
+        rejected = (field.status == Status.REJECTED) | field.once_rejected
         u, v = field.measured.get("u"), field.measured.get("v")
         if u is None or v is None or not rejected.any():
             return
@@ -176,14 +176,6 @@ def _within(part: slice, axis: np.ndarray, low: float, high: float) -> slice:
     first, last = np.searchsorted(axis, [low, high])
     start = part.start + max(0, -(-(int(first) - part.start) // part.step)) * part.step
     return slice(start, min(part.stop, int(last)), part.step)
-
-
-def _rejected_once(field: Field) -> np.ndarray:
-    once = np.zeros(field.grid.shape, bool)
-    for event in field.events:
-        if event.action == "rejected":
-            once |= event.nodes
-    return once & (field.status != Status.MEASURED)
 
 
 def _every(pixels: float) -> int:

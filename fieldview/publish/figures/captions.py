@@ -88,8 +88,10 @@ def _arrows(field: Field, settings: FigureSettings) -> str:
 
 def _counts(field: Field, several: bool) -> str:
     total = field.status.size
+    again = int((field.once_rejected & (field.status == Status.FILLED)).sum())
+    filled = f"filled ({again} of them after they were rejected)" if again else "filled"
     counts = {
-        "filled": field.count(Status.FILLED),
+        filled: field.count(Status.FILLED),
         "rejected": field.count(Status.REJECTED),
         "missing": field.count(Status.MISSING),
         "masked": field.count(Status.MASKED),

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import numpy as np
-
 from fieldview.compute.field import Field, Status
 from fieldview.publish import looks
 from fieldview.publish.figures.panels import Panel
@@ -18,7 +16,7 @@ def draw_marks(axes, field: Field, settings: FigureSettings, view: UnitView) -> 
         chosen = field.status == status
         if chosen.any():
             axes.plot(nodes.real[chosen], nodes.imag[chosen], zorder=4, **_sized(options, size))
-    rejected = _rejected_once(field) & (field.status == Status.FILLED)
+    rejected = field.once_rejected & (field.status == Status.FILLED)
     if rejected.any():
         cross = _sized(_MARKS[Status.REJECTED], size)
         axes.plot(nodes.real[rejected], nodes.imag[rejected], zorder=4, **cross)
@@ -40,22 +38,12 @@ def _sized(options: dict, font: float) -> dict:
     return made | {"ls": "none", "ms": options["share"] * font, "mew": font / 14}
 
 
-def _rejected_once(field: Field) -> np.ndarray:
-    nodes = np.zeros(field.grid.shape, bool)
-    for event in field.events:
-        if event.action == "rejected":
-            nodes |= event.nodes
-        elif event.action == "kept":
-            nodes &= ~event.nodes
-    return nodes
-
-
 def legend_entries(panels: list[Panel]) -> list[str]:
     held = set()
     for panel in panels:
         field = panel.field
         held |= {status for status in _WORDS if (field.status == status).any()}
-        if _rejected_once(field).any():
+        if field.once_rejected.any():
             held.add(Status.REJECTED)
     return [status for status in _WORDS if status in held]
 

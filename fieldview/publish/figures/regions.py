@@ -36,7 +36,7 @@ def draw_numbers(axes, session: Session, field: Field, settings: FigureSettings,
         return
     from matplotlib.patheffects import withStroke
 
-    ready, halo = prepare(field), [withStroke(linewidth=settings.font_pt / 3.2, foreground="white")]
+    ready, halo = prepare(field), [withStroke(linewidth=settings.font_pt / 2.2, foreground="white")]
     taken: list[tuple[float, float, float, float]] = []
     for place, region in enumerate(session.regions):
         name, number = number_of(region, field, ready, session, settings)
