@@ -103,10 +103,19 @@ def said_by_remarks(remarks: Iterable[str]) -> dict:
 
 def write_whole(path: Path, content: bytes) -> None:
     """Write a file under a temporary name beside it, then rename: never half a file under its own name."""
+    _written_whole(path, (content,))
+
+
+def write_lines(path: Path, lines: Iterable[str]) -> None:
+    """The same for lines of text as they come, so that memory does not grow with their number."""
+    _written_whole(path, (f"{line}\n".encode() for line in lines))
+
+
+def _written_whole(path: Path, chunks: Iterable[bytes]) -> None:
     handle, temporary = tempfile.mkstemp(prefix=f".{path.name}.", dir=path.parent)
     try:
         with os.fdopen(handle, "wb") as stream:
-            stream.write(content)
+            stream.writelines(chunks)
             stream.flush()
             os.fsync(stream.fileno())
         # mkstemp makes private files; what we write is as readable as any other new file

@@ -10,7 +10,7 @@ import hashlib
 import json
 import shutil
 from collections import Counter
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from concurrent.futures import Executor
 from dataclasses import dataclass
 from functools import cached_property
@@ -22,7 +22,7 @@ from fieldview.compute.field import Field, Status
 from fieldview.compute.quantities import QUANTITIES
 from fieldview.files import UnreadableFrame
 from fieldview.files.writers import ENDINGS, writer
-from fieldview.files.writing import write_whole
+from fieldview.files.writing import write_lines, write_whole
 from fieldview.publish.maps import quantity_values
 from fieldview.publish.measuring import Progress
 from fieldview.publish.sharing import Share, bench_of, in_order
@@ -85,6 +85,7 @@ def apply_session(
         if skipped and strict:
             work.forget(frame)  # tried again where the same work goes on
             raise InputError(skipped)
+    # only the short part of every frame is held; the rows of the table are read once more when it is written
     parts = [work.part(frame) for frame in work.frames]
     for part in parts:
         for sentence in part["remarks"]:
@@ -241,17 +242,25 @@ class _Work:
         write_whole(self._part_path(frame), json.dumps(part, allow_nan=False).encode())
 
     def part(self, frame: Frame) -> dict:
-        return json.loads(self._part_path(frame).read_text())
+        """What the record says of a frame, without its row of the table."""
+        part = json.loads(self._part_path(frame).read_text())
+        row = part.pop("row", None)
+        return part | {"time": None if row is None else row["time"]}
+
+    def _rows(self) -> Iterator[dict]:
+        """Rows of the table, one frame at a time."""
+        for frame in self.frames:
+            part = json.loads(self._part_path(frame).read_text())
+            if not part["skipped"]:
+                yield part["row"]
 
     def _part_path(self, frame: Frame) -> Path:
         return self.unfinished / f"{str(frame).replace(':', '_')}.json"
 
     def finish(self, parts: list[dict]) -> None:
         """Write table and record, and clear away what was on the way."""
-        rows = [part["row"] for part in parts if not part["skipped"]]
         if self.bench.session.regions:
-            table = "".join(f"{line}\n" for line in csv_lines(rows))
-            write_whole(self.folder / "regions.csv", table.encode())
+            write_lines(self.folder / "regions.csv", csv_lines(self._rows()))
         record = json.dumps(self._record(parts), indent=1, ensure_ascii=False, allow_nan=False)
         write_whole(self.folder / "record.json", (record + "\n").encode())
         for scratch in self.folder.glob(f".{self.name}_*"):
@@ -284,7 +293,7 @@ class _Work:
             "frames": [
                 {
                     "frame": frame,
-                    "time": part["row"]["time"],
+                    "time": part["time"],
                     "file": self.field_name(frame),
                     "vectors": part["status"],
                     "ledger": part["outcomes"],
