@@ -64,7 +64,9 @@ def _mean_speed(contour: Contour) -> Number:
     field = prepared.field
     mean = float(prepared.speed_sums.integral(contour.area_pieces)) / area
     block, corner = contour.area
-    spread = block_variance(block, corner, field, times=contour.block(prepared.direction))
+    # half the digits are plenty for an uncertainty, and the block is what takes the time here
+    single = block.astype(np.float32)
+    spread = block_variance(single, corner, field, times=contour.block(prepared.direction_single))
     common = abs(prepared.direction_sums.integral(contour.area_pieces)) / area
     return made(
         mean,

@@ -134,8 +134,9 @@ def _block_forms(
     # the triangle is a box folded with itself: R = B'B / (mx my)
     modulus = square = 0.0
     for boxed in _boxed(block, int(correlation[0]), int(correlation[1]), times):
-        modulus += float(np.vdot(boxed, boxed).real)
-        square += np.dot(boxed.ravel(), boxed.ravel())
+        own = float(np.vdot(boxed, boxed).real)
+        modulus += own
+        square += np.dot(boxed.ravel(), boxed.ravel()) if np.iscomplexobj(boxed) else own
     return _parts(modulus / np.prod(correlation), square / np.prod(correlation))
 
 
@@ -161,13 +162,16 @@ def _box_sum(block: np.ndarray, nodes: int, axis: int) -> np.ndarray:
     shape[axis] += nodes - 1
     total = np.empty(shape, block.dtype)
 
-    def lines(first: int, last: int | None) -> np.ndarray:
-        return total[first:last] if axis == 0 else total[:, first:last]
+    def lines(of: np.ndarray, first: int, last: int | None) -> np.ndarray:
+        return of[first:last] if axis == 0 else of[:, first:last]
 
-    lines(0, count)[:] = block
-    lines(count, None)[:] = 0
-    for shift in range(1, nodes):
-        moved = lines(shift, shift + count)
+    # the first two of the sum in one pass
+    lines(total, 0, 1)[:] = lines(block, 0, 1)
+    np.add(lines(block, 1, None), lines(block, 0, count - 1), out=lines(total, 1, count))
+    lines(total, count, count + 1)[:] = lines(block, count - 1, None)
+    lines(total, count + 1, None)[:] = 0
+    for shift in range(2, nodes):
+        moved = lines(total, shift, shift + count)
         moved += block
     return total
 

@@ -124,6 +124,11 @@ class Prepared:
         return self.velocity / np.where(self.speed > 0, self.speed, 1.0)
 
     @cached_property
+    def direction_single(self) -> np.ndarray:
+        """The same in single precision, for uncertainties."""
+        return self.direction.astype(np.complex64)
+
+    @cached_property
     def vorticity(self) -> np.ndarray:
         """NaN where there is none: (ny * nx,)."""
         return np.ascontiguousarray(self.rates.real).ravel()
