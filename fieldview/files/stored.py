@@ -40,9 +40,10 @@ def write_store(run: Run, path: Path, *, on_frame: Callable[[int], None] | None 
 
     seen = [_stamp(source) for source in run.sources]
     digests = run.digests()
-    handle, temporary = tempfile.mkstemp(prefix=f".{path.name}.", dir=path.parent)
-    os.close(handle)
+    temporary = None
     try:
+        handle, temporary = tempfile.mkstemp(prefix=f".{path.name}.", dir=path.parent)
+        os.close(handle)
         with h5py.File(temporary, "w") as store:
             unread = _Written(store, run).frames(on_frame)
             store.attrs["format"] = FORMAT
@@ -56,7 +57,8 @@ def write_store(run: Run, path: Path, *, on_frame: Callable[[int], None] | None 
         os.chmod(temporary, 0o666 & ~umask)
         os.replace(temporary, path)
     except BaseException as error:
-        Path(temporary).unlink(missing_ok=True)
+        if temporary is not None:
+            Path(temporary).unlink(missing_ok=True)
         if isinstance(error, OSError):
             raise InputError(f"{path}: cannot be written ({error}); choose another place") from None
         raise
