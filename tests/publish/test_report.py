@@ -1,5 +1,6 @@
 """The report: valid, self-contained, escaped, the same bytes every time, and true to the numbers."""
 
+import json
 import re
 
 import html5lib
@@ -112,3 +113,14 @@ def test_bad_requests_are_one_sentence(session_path, tmp_path, capfd):
         assert cli.run(["report", str(session_path), *arguments]) == 2
         assert sentence in capfd.readouterr().err
     assert list(tmp_path.iterdir()) == []
+
+
+def test_a_single_row_of_nodes_has_a_report(tmp_path):
+    (tmp_path / "row.csv").write_text("x [m],y [m],u [m/s],v [m/s]\n0,0,1,0\n0.1,0,2,0\n0.2,0,3,1\n")
+    session = {"format": "loopflux-session", "version": 1, "run": {"files": ["row.csv"]}}
+    session["regions"] = [{"name": "line", "shape": "line", "points": [[0, 0], [0.2, 0]]}]
+    (tmp_path / "row.session.json").write_text(json.dumps(session))
+    out = tmp_path / "r.html"
+    assert cli.run(["report", str(tmp_path / "row.session.json"), "--out", str(out)]) == 0
+    html5lib.HTMLParser(strict=True).parse(out.read_text())
+    assert "∫u·dl" in out.read_text()

@@ -146,8 +146,10 @@ def length_view(bench: Workbench, settings: FigureSettings, extent: float) -> Un
 def _extent(grid: Grid) -> tuple[float, float, float, float]:
     """Left, right, lower and upper edge of the cells about the nodes, in the plane."""
     edges = []
+    # a single row or column is drawn as a band a quarter as wide as it is long
+    band = 0.25 * max(float(np.ptp(grid.x)), float(np.ptp(grid.y))) or 1.0
     for axis in (grid.x, grid.y):
-        steps = np.diff(axis) if axis.size > 1 else np.zeros(1)
+        steps = np.diff(axis) if axis.size > 1 else np.full(1, band)
         edges.append((axis[0] - 0.5 * steps[0], axis[-1] + 0.5 * steps[-1]))
     corners = grid.placement.to_plane(np.add.outer(np.array(edges[0]), 1j * np.array(edges[1])))
     return (

@@ -80,7 +80,9 @@ def _paint(axes, panel: Panel, scale: Scale, view: UnitView):
         return image
     nodes = factor * grid.nodes
     if not grid.is_plane:
-        return axes.scatter(nodes.real, nodes.imag, c=panel.values, marker="s", s=16, **options)
+        return axes.scatter(
+            nodes.real.ravel(), nodes.imag.ravel(), c=panel.values.ravel(), marker="s", s=16, **options
+        )
     return axes.pcolormesh(nodes.real, nodes.imag, panel.values, shading="nearest", **options)
 
 

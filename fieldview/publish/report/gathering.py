@@ -216,7 +216,7 @@ def report_figures(bench: Workbench, frames: list[Frame]) -> list[dict]:
     if not wanted:
         wide = WIDTHS["two"]
         field = bench.field(frames[0])
-        name = "vorticity" if field.in_plane else next(iter(field.components))
+        name = "vorticity" if field.in_plane and field.grid.is_plane else next(iter(field.components))
         wanted = [FigureSettings(name="map", quantities=(name,), frames=str(frames[0]), width_mm=wide)]
         closed = [region for region in bench.session.regions if region.outline().closed]
         if closed and field.in_plane:
