@@ -24,6 +24,7 @@ from fieldview.session.replay import Workbench
 from fieldview.session.steps import Calibrate
 from fieldview.session.store import dump_session, parse_session, save_session
 from fieldview.session.traces import region_trace
+from fieldview.shipped import shipped_folder
 from tests.session.runs import SIGMA, edited, pulsing_frames
 
 REGIONS = [
@@ -258,3 +259,10 @@ def test_changed_settings_are_checked_as_a_session_s(bench):
     assert changed_settings(FigureSettings(), {"dpi": 72, "kind": None}).dpi == 72
     with pytest.raises(InputError, match="figure, dpi"):
         changed_settings(FigureSettings(), {"dpi": 1})
+
+
+def test_a_run_across_the_plane_is_shown_by_its_component(tmp_path, capfd):
+    path = shipped_folder("sample_sessions") / "hood_face/hood_face.session.json"
+    assert cli.run(["figure", str(path), "--out", str(tmp_path / "h.svg")]) == 0
+    assert cli.run(["figure", str(path), "--out", str(tmp_path / "g.svg"), "--kind", "growth"]) == 2
+    assert "needs u and v" in capfd.readouterr().err

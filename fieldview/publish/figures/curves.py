@@ -34,6 +34,8 @@ def growth(bench: Workbench, settings: FigureSettings):
     region, _ = chosen_region(bench, settings)
     shape = _closed(region)
     field = _one_frame(bench, settings)
+    if not field.in_plane:
+        raise InputError("a growth curve needs u and v; this field has no components in the plane")
     curve = growth_curve(field, shape, FACTORS, line=bench.session.line)
     numbers = curve.circulation if settings.number == "circulation" else curve.flux
     figure, axes = _sheet(settings)

@@ -56,7 +56,7 @@ def make(
     Raises InputError where the session, the settings or the place cannot be used; nothing is written then.
     """
     bench = Workbench(load_session(session), cache_bytes=CACHE_BYTES)
-    settings = changed_settings(settings_named(bench.session, name), changed)
+    settings = changed_settings(settings_named(bench, name), changed)
     remarks = bench.changed_sources()
     for sentence in remarks:
         say(sentence)

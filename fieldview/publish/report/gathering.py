@@ -15,6 +15,7 @@ from fieldview.compute.stencils import SCHEMES
 from fieldview.publish import wording
 from fieldview.publish.figures import caption, draw, picture
 from fieldview.publish.figures.captions import uncertainty_statement
+from fieldview.publish.figures.drawing import first_quantity
 from fieldview.publish.region_numbers import ENTRIES, figure, symbol
 from fieldview.session.choices import TITLES, Study
 from fieldview.session.figures import WIDTHS, FigureSettings
@@ -216,7 +217,7 @@ def report_figures(bench: Workbench, frames: list[Frame]) -> list[dict]:
     if not wanted:
         wide = WIDTHS["two"]
         field = bench.field(frames[0])
-        name = "vorticity" if field.in_plane and field.grid.is_plane else next(iter(field.components))
+        name = first_quantity(field)
         wanted = [FigureSettings(name="map", quantities=(name,), frames=str(frames[0]), width_mm=wide)]
         closed = [region for region in bench.session.regions if region.outline().closed]
         if closed and field.in_plane:
