@@ -12,6 +12,7 @@ from fieldview.cli.terminal import (
     DONE,
     WITH_REMARKS,
     Cluster,
+    Format,
     Frames,
     Out,
     SessionFile,
@@ -51,7 +52,7 @@ def peek(
 def measure(
     session: SessionFile,
     frames: Frames = None,
-    format: Annotated[str, typer.Option("--format", help="table, csv or json")] = "table",
+    format: Format = "table",
     out: Out = None,
     strict: Strict = False,
     workers: Workers = 1,

@@ -11,6 +11,7 @@ from fieldview.cli.terminal import (
     DONE,
     WITH_REMARKS,
     Cluster,
+    Format,
     Frames,
     Out,
     SessionFile,
@@ -37,7 +38,8 @@ def check(
 ) -> int:
     """Say whether the run is good: shares, outliers, noise, jumps, stuck frames, drift."""
     from fieldview.publish import sharing
-    from fieldview.publish.run_reports import FORMATS, check_report
+    from fieldview.publish.outputs import FORMATS
+    from fieldview.publish.run_reports import check_report
 
     check_format(format, FORMATS)
     check_place(out)
@@ -51,7 +53,7 @@ def check(
 def stats(
     session: SessionFile,
     frames: Frames = None,
-    format: Annotated[str, typer.Option("--format", help="table, csv or json")] = "table",
+    format: Format = "table",
     out: Out = None,
     at: Annotated[
         list[str] | None,
@@ -70,7 +72,8 @@ def stats(
 ) -> int:
     """Statistics over the frames: mean, deviation, stresses, skewness, kurtosis, with uncertainties."""
     from fieldview.publish import sharing
-    from fieldview.publish.run_reports import FORMATS, statistics_report
+    from fieldview.publish.outputs import FORMATS
+    from fieldview.publish.run_reports import statistics_report
 
     check_format(format, FORMATS)
     check_place(out)

@@ -11,6 +11,7 @@ from fieldview.cli.terminal import (
     DONE,
     WITH_REMARKS,
     Cluster,
+    Format,
     Out,
     SessionFile,
     Workers,
@@ -22,12 +23,12 @@ from fieldview.cli.terminal import (
     say,
 )
 
-Format = Annotated[str, typer.Option("--format", help="table, csv or json")]
 OneFrame = Annotated[str, typer.Option("--frame", help="A number, mean, or phase:8:0", metavar="WHICH")]
 
 
 def _output(format: str, out: Path | None):
-    from fieldview.publish.study_reports import FORMATS, Output
+    from fieldview.publish.outputs import FORMATS
+    from fieldview.publish.study_reports import Output
 
     check_format(format, FORMATS)
     check_place(out)

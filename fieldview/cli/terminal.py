@@ -37,6 +37,7 @@ Frames = Annotated[
     ),
 ]
 
+Format = Annotated[str, typer.Option("--format", help="table, csv or json")]
 Out = Annotated[
     Path | None, typer.Option("--out", help="Write to this file instead of stdout", metavar="FILE")
 ]
@@ -81,12 +82,10 @@ def print_text(text: str, out: Path | None) -> None:
 
 def write_text(path: Path, text: str) -> None:
     """Write a file whole or not at all."""
-    from fieldview.files.writing import write_whole
+    from fieldview.files.writing import said_if_unwritable, write_whole
 
-    try:
+    with said_if_unwritable(path):
         write_whole(path, text.encode())
-    except OSError as error:
-        raise InputError(f"{path}: cannot be written ({error.strerror}); choose another place") from None
 
 
 def progress(frames: Iterable, what: str, total: int) -> Iterator:

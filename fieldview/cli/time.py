@@ -10,6 +10,7 @@ import typer
 from fieldview.cli.terminal import (
     DONE,
     WITH_REMARKS,
+    Format,
     Frames,
     Out,
     SessionFile,
@@ -23,13 +24,13 @@ from fieldview.cli.terminal import (
 )
 from fieldview.compute.errors import InputError
 
-Format = Annotated[str, typer.Option("--format", help="table, csv or json")]
 Maps = Annotated[Path | None, typer.Option("--maps", help="Write the maps to this file too", metavar="FILE")]
 Filled = Annotated[bool, typer.Option("--filled", help="Count filled vectors as samples")]
 
 
 def _request(session: Path, frames: str | None, format: str, out: Path | None, maps: Path | None = None):
-    from fieldview.publish.time_reports import FORMATS, Request
+    from fieldview.publish.outputs import FORMATS
+    from fieldview.publish.time_reports import Request
 
     check_format(format, FORMATS)
     check_place(out)

@@ -9,8 +9,6 @@ from __future__ import annotations
 
 import hashlib
 import json
-import os
-import tempfile
 import threading
 from collections.abc import Callable
 from functools import cached_property
@@ -25,6 +23,7 @@ from fieldview.compute.grid import Grid, Placement
 from fieldview.compute.units import Units
 from fieldview.files.reading import Reading
 from fieldview.files.run import Run, UnreadableFrame, digest_of, name_within
+from fieldview.files.writing import said_if_unwritable, whole_file
 
 FORMAT = "loopflux run store 1"
 
@@ -40,28 +39,14 @@ def write_store(run: Run, path: Path, *, on_frame: Callable[[int], None] | None 
 
     seen = [_stamp(source) for source in run.sources]
     digests = run.digests()
-    temporary = None
-    try:
-        handle, temporary = tempfile.mkstemp(prefix=f".{path.name}.", dir=path.parent)
-        os.close(handle)
-        with h5py.File(temporary, "w") as store:
-            unread = _Written(store, run).frames(on_frame)
-            store.attrs["format"] = FORMAT
-            store.attrs["reading"] = run.reading.model_dump_json()
-            store.attrs["units"] = str(run.units)
-            store.attrs["notes"] = json.dumps(run.notes)
-            stamps = zip(digests.items(), seen, strict=True)
-            store.attrs["sources"] = json.dumps([(*entry, *stamp) for entry, stamp in stamps])
-        umask = os.umask(0)
-        os.umask(umask)
-        os.chmod(temporary, 0o666 & ~umask)
-        os.replace(temporary, path)
-    except BaseException as error:
-        if temporary is not None:
-            Path(temporary).unlink(missing_ok=True)
-        if isinstance(error, OSError):
-            raise InputError(f"{path}: cannot be written ({error}); choose another place") from None
-        raise
+    with said_if_unwritable(path), whole_file(path) as temporary, h5py.File(temporary, "w") as store:
+        unread = _Written(store, run).frames(on_frame)
+        store.attrs["format"] = FORMAT
+        store.attrs["reading"] = run.reading.model_dump_json()
+        store.attrs["units"] = str(run.units)
+        store.attrs["notes"] = json.dumps(run.notes)
+        stamps = zip(digests.items(), seen, strict=True)
+        store.attrs["sources"] = json.dumps([(*entry, *stamp) for entry, stamp in stamps])
     return unread
 
 

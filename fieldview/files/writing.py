@@ -5,11 +5,13 @@ from __future__ import annotations
 import os
 import re
 import tempfile
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Iterator, Mapping
+from contextlib import contextmanager
 from pathlib import Path
 
 import numpy as np
 
+from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field
 from fieldview.compute.grid import Placement
 
@@ -112,20 +114,38 @@ def write_lines(path: Path, lines: Iterable[str]) -> None:
 
 
 def _written_whole(path: Path, chunks: Iterable[bytes]) -> None:
-    handle, temporary = tempfile.mkstemp(prefix=f".{path.name}.", dir=path.parent)
+    with whole_file(path) as temporary, temporary.open("wb") as stream:
+        stream.writelines(chunks)
+        stream.flush()
+        os.fsync(stream.fileno())
+
+
+@contextmanager
+def whole_file(path: Path) -> Iterator[Path]:
+    """A temporary name beside the file to be written; it takes the file's own name when all went well."""
+    handle, name = tempfile.mkstemp(prefix=f".{path.name}.", dir=path.parent)
+    os.close(handle)
+    temporary = Path(name)
     try:
-        with os.fdopen(handle, "wb") as stream:
-            stream.writelines(chunks)
-            stream.flush()
-            os.fsync(stream.fileno())
+        yield temporary
         # mkstemp makes private files; what we write is as readable as any other new file
         umask = os.umask(0)
         os.umask(umask)
-        os.chmod(temporary, 0o666 & ~umask)
+        temporary.chmod(0o666 & ~umask)
         os.replace(temporary, path)
     except BaseException:
-        Path(temporary).unlink(missing_ok=True)
+        temporary.unlink(missing_ok=True)
         raise
+
+
+@contextmanager
+def said_if_unwritable(path: Path) -> Iterator[None]:
+    """Whatever the system has against writing a file, as one sentence: an InputError."""
+    try:
+        yield
+    except OSError as error:
+        why = error.strerror or error
+        raise InputError(f"{path}: cannot be written ({why}); choose another place") from None
 
 
 def _plain(text: str) -> str:

@@ -54,7 +54,6 @@ class FigureSheet(StudySheet):
         self.column.addLayout(both)
         self.settings = FigureSettings()
         self._drawn: tuple | None = None
-        self._writing = ""
         self._pause = QTimer(self)
         self._pause.setSingleShot(True)
         self._pause.setInterval(_PAUSE_MS)
@@ -92,7 +91,6 @@ class FigureSheet(StudySheet):
         settings = self.settings
         if path.suffix.lower() in (".gif", ".apng") and len(self.desk.bench.frames(settings.frames)) < 2:
             settings = settings.model_copy(update={"frames": "0:"})
-        self._writing = path.name
         self.ask(work.figure_file, settings, path, title=f"Writing {path.name}")
 
     def show_result(self, value) -> None:

@@ -8,8 +8,6 @@ from fieldview.gui import dialogs
 from fieldview.gui.actions import Command, has_field, has_frames
 from fieldview.gui.picture import Picture
 
-STORE_ENDING = ".store.h5"
-
 
 def has_regions(picture: Picture) -> bool:
     return picture.field is not None and bool(picture.session.regions)
@@ -112,6 +110,7 @@ def report(window) -> None:
 
 
 def store(window) -> None:
+    from fieldview.publish.storing import store_name
+
     path = window.desk.picture.path
-    name = path.name.removesuffix(".json").removesuffix(".session") + STORE_ENDING
-    window.desk.store(path.parent / name)
+    window.desk.store(path.parent / store_name(path))

@@ -31,7 +31,7 @@ from fieldview.session.frames import Frame, left_out
 from fieldview.session.ledger import Tally
 from fieldview.session.measure import chosen_frames, frame_row, unanswered
 from fieldview.session.replay import Workbench
-from fieldview.session.store import dump_session, load_session
+from fieldview.session.store import dump_session, load_session, session_digest, stem_of
 
 _UNFINISHED = ".unfinished"
 
@@ -127,7 +127,7 @@ class _Work:
 
     @property
     def name(self) -> str:
-        return self.path.name.removesuffix(".json").removesuffix(".session")
+        return stem_of(self.path)
 
     @property
     def unfinished(self) -> Path:
@@ -218,7 +218,7 @@ class _Work:
             "sigma": field.error.origin,
         }
         self._keep(frame, part)
-        attributes = {"session": self.path.name, "session_digest": _digest(dump_session(self.bench.session))}
+        attributes = {"session": self.path.name, "session_digest": session_digest(self.bench.session)}
         if self.bench.session.title:
             attributes["title"] = self.bench.session.title
         writer(self.to)(
@@ -278,7 +278,7 @@ class _Work:
             "identity": self.identity,
             "program": f"loopflux {fieldview.__version__}",
             "session": self.path.name,
-            "session_digest": _digest(dump_session(session)),
+            "session_digest": session_digest(session),
             "sources": run.digests(),
             "reading": {"units": str(run.units), "remarks": list(run.notes)},
             "error_model": session.error_model.model_dump(mode="json", exclude_none=True),
@@ -324,7 +324,3 @@ def _identity_in(record: str | None) -> str | None:
         return json.loads(record).get("identity", "unknown")
     except (ValueError, AttributeError):
         return "unknown"
-
-
-def _digest(text: str) -> str:
-    return "sha256:" + hashlib.sha256(text.encode()).hexdigest()

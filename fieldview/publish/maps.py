@@ -11,6 +11,7 @@ from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field
 from fieldview.compute.quantities import quantity_map
 from fieldview.files.writers import ENDINGS, writer
+from fieldview.files.writing import said_if_unwritable
 
 Values = dict[str, tuple[np.ndarray, str]]
 """Values (ny, nx) and unit by name."""
@@ -36,7 +37,5 @@ def check_ending(path: Path | None) -> None:
 def write_maps(path: Path, field: Field, values: Values, *, session: Path) -> None:
     """Raises InputError where the file cannot be written."""
     check_ending(path)
-    try:
+    with said_if_unwritable(path):
         writer(path.suffix[1:].lower())(path, field, quantities=values, attributes={"session": session.name})
-    except OSError as error:
-        raise InputError(f"{path}: cannot be written ({error.strerror}); choose another place") from None

@@ -2,9 +2,6 @@
 
 from __future__ import annotations
 
-import csv
-import io
-import json
 import textwrap
 from collections.abc import Iterable, Iterator
 from concurrent.futures import Executor
@@ -15,15 +12,13 @@ from fieldview.compute.lag_window import LAGS
 from fieldview.publish import wording
 from fieldview.publish.maps import Values, check_ending, write_maps
 from fieldview.publish.measuring import Progress
+from fieldview.publish.outputs import as_text
 from fieldview.publish.remarks import Remarks
 from fieldview.publish.sharing import Share, bench_of, in_order, portions
-from fieldview.publish.tables import plain_text
 from fieldview.session.check import RunCheck, Seen, run_check, seen
 from fieldview.session.replay import Workbench
 from fieldview.session.statistics import RunStatistics, frame_numbers, stretch_statistics, stretches
 from fieldview.session.store import load_session
-
-FORMATS = ("table", "csv", "json")
 
 
 def check_report(
@@ -40,12 +35,9 @@ def check_report(
     remarks = Remarks(say, bench)
     numbers = frame_numbers(bench, frames)
     found = checked(bench, numbers, progress=progress, remark=remarks, executor=executor)
-    if format == "json":
-        told = {"session": path.name, "findings": found.rows(), "frames": found.frame_rows()}
-        return json.dumps(told, indent=1, ensure_ascii=False, allow_nan=False) + "\n", bool(remarks)
-    if format == "csv":
-        return csv_text(flat(row) for row in found.frame_rows()), bool(remarks)
-    return "\n".join(_findings(found.rows())) + "\n", bool(remarks)
+    rows, findings = found.frame_rows(), found.rows()
+    told = {"session": path.name, "findings": findings, "frames": rows}
+    return as_text(format, told, rows, _findings(findings)), bool(remarks)
 
 
 def checked(
@@ -112,12 +104,8 @@ def statistics_report(
     rows = run.rows(subtract_noise=subtract_noise, points=points)
     if maps is not None:
         write_maps(maps, run.mean, _map_values(run, subtract_noise), session=path)
-    if format == "json":
-        told = {"session": path.name, "frames": run.frames, "statistics": rows, "remarks": run.remarks()}
-        return json.dumps(told, indent=1, ensure_ascii=False, allow_nan=False) + "\n", bool(remarks)
-    if format == "csv":
-        return csv_text(flat(row) for row in rows), bool(remarks)
-    return "\n".join(_statistics(rows, run)) + "\n", bool(remarks)
+    told = {"session": path.name, "frames": run.frames, "statistics": rows, "remarks": run.remarks()}
+    return as_text(format, told, rows, _statistics(rows, run)), bool(remarks)
 
 
 def statistics_over(
@@ -188,26 +176,3 @@ def _map_values(run: RunStatistics, subtract_noise: bool) -> Values:
         if entry.uncertainty is not None:
             values[f"{name}_uncertainty"] = (entry.uncertainty, unit)
     return values
-
-
-def flat(row: dict) -> dict:
-    """A row without nested parts, which a table cannot hold."""
-    flat = {}
-    for key, value in row.items():
-        if isinstance(value, dict):
-            flat |= {f"{key}_{inner}": part for inner, part in value.items()}
-        elif not isinstance(value, list):
-            flat[key] = value
-    return flat
-
-
-def csv_text(rows: Iterable[dict]) -> str:
-    """Rows of the same keys as text with a header line."""
-    out, writer = io.StringIO(), None
-    for row in rows:
-        if writer is None:
-            writer = csv.DictWriter(out, row, lineterminator="\n")
-            writer.writeheader()
-        cells = {key: plain_text(cell) if isinstance(cell, str) else cell for key, cell in row.items()}
-        writer.writerow(cells)
-    return out.getvalue()

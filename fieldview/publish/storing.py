@@ -8,9 +8,12 @@ from fieldview.files import open_run
 from fieldview.files.stored import write_store
 from fieldview.publish.measuring import Progress
 from fieldview.session.models import Session
-from fieldview.session.store import load_session, save_session
+from fieldview.session.store import load_session, save_session, stem_of
 
-ENDING = ".store.h5"
+
+def store_name(path: Path) -> str:
+    """Name of the run store of a session file, beside which it lies."""
+    return f"{stem_of(path)}.store.h5"
 
 
 def store_run(path: Path, *, progress: Progress, say) -> bool:
@@ -21,7 +24,7 @@ def store_run(path: Path, *, progress: Progress, say) -> bool:
     session = load_session(path)
     source = session.run
     run = open_run(source.files, source.reading, folder=session.folder)
-    name = path.name.removesuffix(".json").removesuffix(".session") + ENDING
+    name = store_name(path)
     ticks = iter(progress(range(len(run)), "storing", len(run)))
     next(ticks, None)
     unread = write_store(run, path.parent / name, on_frame=lambda _: next(ticks, None))

@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-import json
 import textwrap
-from collections.abc import Callable, Iterable, Iterator, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from concurrent.futures import Executor
 from dataclasses import dataclass
 from pathlib import Path
@@ -13,9 +12,9 @@ from fieldview.compute.errors import InputError
 from fieldview.publish import wording
 from fieldview.publish.maps import check_ending, write_maps
 from fieldview.publish.measuring import Progress
+from fieldview.publish.outputs import as_text
 from fieldview.publish.region_numbers import symbol
 from fieldview.publish.remarks import Remarks
-from fieldview.publish.run_reports import csv_text, flat
 from fieldview.publish.studies import choices_study
 from fieldview.session.choices import TITLES, Study
 from fieldview.session.comparison import Comparison, compare
@@ -23,8 +22,6 @@ from fieldview.session.measure import frame_row
 from fieldview.session.repeats import Repeat, repeats
 from fieldview.session.replay import Frame, Workbench
 from fieldview.session.store import load_session
-
-FORMATS = ("table", "csv", "json")
 
 
 @dataclass(frozen=True)
@@ -34,13 +31,6 @@ class Output:
     format: str
     progress: Progress
     say: Callable[[str], None]
-
-    def written(self, document: dict, rows: Iterable[dict], lines: Iterable[str]) -> str:
-        if self.format == "json":
-            return json.dumps(document, indent=1, ensure_ascii=False, allow_nan=False) + "\n"
-        if self.format == "csv":
-            return csv_text(flat(row) for row in rows)
-        return "\n".join(lines) + "\n"
 
 
 def one_frame(bench: Workbench, spec: str) -> Frame:
@@ -70,7 +60,7 @@ def choices_report(
     document = {"session": path.name, "frame": chosen, "studies": [study_row(study) for study in studies]}
     rows = [{"region": study.region} | row for study in studies for row in study.summary()]
     lines = (line for study in studies for line in study_lines(study))
-    return output.written(document, rows, lines), bool(remarks)
+    return as_text(output.format, document, rows, lines), bool(remarks)
 
 
 def study_row(study: Study) -> dict:
@@ -148,7 +138,7 @@ def comparison_report(
         "components": found.component_rows(),
         "regions": found.region_rows(),
     }
-    return output.written(document, found.region_rows(), comparison_lines(found)), bool(remarks)
+    return as_text(output.format, document, found.region_rows(), comparison_lines(found)), bool(remarks)
 
 
 def comparison_lines(found: Comparison) -> Iterator[str]:
@@ -204,7 +194,7 @@ def repeats_report(paths: Sequence[Path], frames: str, output: Output) -> tuple[
     found = repeats(measured)
     rows = [repeat.row() for repeat in found]
     document = {"repeats": list(measured), "numbers": rows}
-    return output.written(document, rows, repeat_lines(found, len(measured))), bool(remarks)
+    return as_text(output.format, document, rows, repeat_lines(found, len(measured))), bool(remarks)
 
 
 def repeat_lines(found: Sequence[Repeat], count: int) -> Iterator[str]:

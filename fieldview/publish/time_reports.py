@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass
 from pathlib import Path
@@ -15,16 +14,14 @@ from fieldview.compute.time_series import autocorrelation
 from fieldview.publish import wording
 from fieldview.publish.maps import Values, check_ending, write_maps
 from fieldview.publish.measuring import Progress
+from fieldview.publish.outputs import as_text
 from fieldview.publish.remarks import Remarks
-from fieldview.publish.run_reports import csv_text, flat
 from fieldview.session.modes import run_modes, two_point
 from fieldview.session.phase import phase_averages
 from fieldview.session.replay import Workbench
 from fieldview.session.statistics import frame_numbers
 from fieldview.session.store import load_session
 from fieldview.session.traces import TITLES, Trace, probe_trace, region_trace, strouhal_options, trace_row
-
-FORMATS = ("table", "csv", "json")
 
 
 @dataclass(frozen=True)
@@ -48,7 +45,7 @@ class Request:
     progress: Progress
     say: Callable[[str], None]
 
-    def begin(self, what: str) -> tuple[Workbench, list[int], Callable[[int], None], list[str]]:
+    def begin(self, what: str) -> tuple[Workbench, list[int], Callable[[int], None], Remarks]:
         """The workbench, the frames' numbers, what is to be told of every frame done, and the remarks."""
         bench = Workbench(load_session(self.path))
         remarks = Remarks(self.say, bench)
@@ -59,12 +56,7 @@ class Request:
 
     def told(self, document: dict, rows: Iterable[dict], lines: Iterable[str]) -> str:
         """The same in the format that was asked for."""
-        if self.format == "json":
-            whole = {"session": self.path.name} | document
-            return json.dumps(_plain(whole), indent=1, ensure_ascii=False, allow_nan=False) + "\n"
-        if self.format == "csv":
-            return csv_text(flat(_plain(row)) for row in rows)
-        return "\n".join(lines) + "\n"
+        return as_text(self.format, {"session": self.path.name} | document, rows, lines)
 
 
 def series_report(
@@ -288,14 +280,3 @@ def correlation_report(
         for row in rows
     ]
     return request.told(document, rows, lines), bool(remarks)
-
-
-def _plain(value):
-    """NaN as null, all the way down."""
-    if isinstance(value, dict):
-        return {key: _plain(part) for key, part in value.items()}
-    if isinstance(value, list | tuple):
-        return [_plain(part) for part in value]
-    if isinstance(value, float | np.floating):
-        return float(value) if np.isfinite(value) else None
-    return value

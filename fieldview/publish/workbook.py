@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import datetime
-import hashlib
 import io
 from collections.abc import Iterable, Iterator
 from concurrent.futures import Executor
@@ -12,15 +11,16 @@ from pathlib import Path
 
 import fieldview
 from fieldview.compute.errors import InputError
-from fieldview.files.writing import write_whole
+from fieldview.files.writing import said_if_unwritable, write_whole
 from fieldview.publish.figures.captions import uncertainty_statement
 from fieldview.publish.measuring import Progress, measured_rows
+from fieldview.publish.outputs import flat
 from fieldview.publish.remarks import Remarks
-from fieldview.publish.run_reports import checked, flat, statistics_over
+from fieldview.publish.run_reports import checked, statistics_over
 from fieldview.publish.tables import plain_text, table_rows
 from fieldview.session.replay import Workbench
 from fieldview.session.statistics import frame_numbers
-from fieldview.session.store import dump_session, load_session
+from fieldview.session.store import load_session, session_digest
 
 _DATE = datetime.datetime(1980, 1, 1)
 """When the workbook says it was made: the same session gives the same bytes."""
@@ -68,10 +68,8 @@ def write_workbook(
         Sheet("remarks", [["remark"], *([text] for text in run.remarks())]),
     ]
     content = workbook_bytes(sheets)
-    try:
+    with said_if_unwritable(out):
         write_whole(out, content)
-    except OSError as error:
-        raise InputError(f"{out}: cannot be written ({error.strerror}); choose another place") from None
     return bool(remarks)
 
 
@@ -123,7 +121,7 @@ def _about(path: Path, bench: Workbench, numbers: list[int]) -> Iterator[list]:
     yield ["what", "value"]
     yield ["title", session.title]
     yield ["session", path.name]
-    yield ["session digest", "sha256:" + hashlib.sha256(dump_session(session).encode()).hexdigest()]
+    yield ["session digest", session_digest(session)]
     yield ["frames", f"{len(numbers)} of {len(bench.run)}"]
     yield ["units", str(bench.units)]
     yield ["uncertainties", uncertainty_statement(bench.field(numbers[0]))]

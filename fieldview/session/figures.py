@@ -8,7 +8,6 @@ from pydantic import Field, field_validator, model_validator
 
 from fieldview.session.base import Entry, Finite, Point, quantity
 
-KINDS = ("map", "growth", "around", "profile", "time", "spectrum", "convergence")
 WIDTHS = {"one": 85.0, "two": 175.0}
 """Widths of one and of two columns of a journal's page [mm] (common practice, no source)."""
 

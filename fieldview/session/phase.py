@@ -17,7 +17,7 @@ import numpy as np
 from fieldview.compute.errors import InputError
 from fieldview.compute.field import Field
 from fieldview.session.statistics import RunStatistics, frame_numbers
-from fieldview.session.wording import figure
+from fieldview.session.wording import figure, known_number
 
 CYCLE = {"deg": 360.0, "rad": 2 * np.pi, "1": 1.0}
 """A whole cycle in the units a phase channel may have."""
@@ -182,9 +182,9 @@ class PhaseAverages:
                 "phase_deg": 360 * chosen.centre,
                 "width_deg": 360 * self.rule.bin_width,
                 "frames": len(chosen.offsets),
-                "shift_deg": _plain(360 * chosen.shift),
-                "jitter_deg": _plain(360 * chosen.jitter),
-                "first_harmonic_kept": _plain(chosen.kept()),
+                "shift_deg": known_number(360 * chosen.shift),
+                "jitter_deg": known_number(360 * chosen.jitter),
+                "first_harmonic_kept": known_number(chosen.kept()),
                 "drift_deg": self._drift(chosen),
             }
             for number, chosen in enumerate(self.bins)
@@ -226,7 +226,3 @@ def phase_averages(
         if on_frame is not None:
             on_frame(number)
     return averages
-
-
-def _plain(value: float) -> float | None:
-    return float(value) if np.isfinite(value) else None

@@ -18,6 +18,7 @@ from fieldview.compute.lag_window import LAGS
 from fieldview.compute.quantities import quantity_map
 from fieldview.compute.statistics import FrameStatistics, StatisticMap, statistic_maps
 from fieldview.session.clock import Clock
+from fieldview.session.wording import known_number
 
 STRETCH = 128
 """Frames of a stretch. Always the same, so that the last digit does not depend on how many share the work."""
@@ -306,9 +307,9 @@ def _row(entry: StatisticMap, unit: str, grid, nodes) -> dict:
         "title": entry.title,
         "unit": unit,
         "nodes": int(known.size),
-        "median": _plain(np.median(known)) if known.size else None,
-        "lowest": _plain(known.min()) if known.size else None,
-        "highest": _plain(known.max()) if known.size else None,
+        "median": known_number(np.median(known)) if known.size else None,
+        "lowest": known_number(known.min()) if known.size else None,
+        "highest": known_number(known.max()) if known.size else None,
         "median_uncertainty": _median(entry.uncertainty),
         "remarks": list(entry.remarks),
     }
@@ -319,19 +320,15 @@ def _row(entry: StatisticMap, unit: str, grid, nodes) -> dict:
 
 def _at(entry: StatisticMap, grid, node: tuple[int, int]) -> dict:
     place = grid.nodes[node]
-    uncertainty = None if entry.uncertainty is None else _plain(entry.uncertainty[node])
+    uncertainty = None if entry.uncertainty is None else known_number(entry.uncertainty[node])
     return {
         "node": list(node),
         "place": [float(place.real), float(place.imag)],
-        "value": _plain(entry.values[node]),
+        "value": known_number(entry.values[node]),
         "uncertainty": uncertainty,
     }
 
 
 def _median(values: np.ndarray | None) -> float | None:
     known = np.array([]) if values is None else values[np.isfinite(values)]
-    return _plain(np.median(known)) if known.size else None
-
-
-def _plain(value) -> float | None:
-    return float(value) if np.isfinite(value) else None
+    return known_number(np.median(known)) if known.size else None

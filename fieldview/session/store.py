@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import hashlib
 import json
 import math
 import os
@@ -13,7 +14,7 @@ from typing import Any
 from pydantic import ValidationError
 
 from fieldview.compute.errors import InputError
-from fieldview.files.writing import write_whole
+from fieldview.files.writing import said_if_unwritable, write_whole
 from fieldview.session.models import FORMAT, VERSION, Session
 
 MIGRATIONS: dict[int, Callable[[dict], dict]] = {}
@@ -62,10 +63,8 @@ def save_session(session: Session, path: str | Path) -> None:
     """
     path = Path(path)
     moved = _relative_to(session, path.parent)
-    try:
+    with said_if_unwritable(path):
         write_whole(path, dump_session(moved).encode())
-    except OSError as error:
-        raise InputError(f"{path}: cannot be written ({error.strerror}); choose another place") from None
 
 
 def dump_session(session: Session) -> str:
@@ -74,6 +73,16 @@ def dump_session(session: Session) -> str:
     if not session.figures:
         del document["figures"]
     return _laid_out(document) + "\n"
+
+
+def session_digest(session: Session) -> str:
+    """sha256 of the session's text."""
+    return "sha256:" + hashlib.sha256(dump_session(session).encode()).hexdigest()
+
+
+def stem_of(path: Path) -> str:
+    """``wake`` of ``wake.session.json``: what is made of a session is called after it."""
+    return path.name.removesuffix(".json").removesuffix(".session")
 
 
 def schema() -> dict[str, Any]:

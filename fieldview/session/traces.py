@@ -18,7 +18,7 @@ from fieldview.files import UnreadableFrame
 from fieldview.session.clock import Clock
 from fieldview.session.measure import NUMBERS, number_row, region_named
 from fieldview.session.statistics import frame_numbers
-from fieldview.session.wording import figure
+from fieldview.session.wording import figure, known_number
 
 
 @dataclass(frozen=True, eq=False)
@@ -275,8 +275,4 @@ def strouhal_options(bench, trace: Trace) -> dict:
 
 
 def _with(value, unit: str, uncertainty) -> dict:
-    return {"value": _plain(value), "unit": unit, "uncertainty": _plain(uncertainty)}
-
-
-def _plain(value) -> float | None:
-    return None if value is None or not np.isfinite(value) else float(value)
+    return {"value": known_number(value), "unit": unit, "uncertainty": known_number(uncertainty)}

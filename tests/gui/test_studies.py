@@ -249,3 +249,9 @@ def test_repeats_are_judged(pulse, qtbot, pulse_file):
     sheet.take([str(pulse_file), str(pulse_file)])
     started(pulse, qtbot, sheet)
     assert "scatters less than stated" in sheet.told.toPlainText(), "one and the same run three times"
+
+
+def test_a_place_that_cannot_be_written_is_one_sentence(pulse, qtbot, tmp_path):
+    pulse.desk.report(tmp_path / "nowhere" / "r.html")
+    settle(qtbot, pulse)
+    assert "r.html: cannot be written (No such file or directory)" in pulse.banner.text.text()

@@ -206,7 +206,7 @@ def choices(bench: Any, session: Session, region: str, frame: int, report: Repor
 
 def report_file(bench: Any, session: Session, name: str, out: Path, report: Report) -> Path:
     """Write the measurement report of the session as it is now."""
-    from fieldview.files.writing import write_whole
+    from fieldview.files.writing import said_if_unwritable, write_whole
     from fieldview.publish.report.writing import report_text
 
     text, _ = report_text(
@@ -217,7 +217,8 @@ def report_file(bench: Any, session: Session, name: str, out: Path, report: Repo
         progress=_followed(report),
         say=lambda _: None,
     )
-    write_whole(out, text.encode())
+    with said_if_unwritable(out):
+        write_whole(out, text.encode())
     return out
 
 
@@ -243,7 +244,7 @@ def figure_preview(bench: Any, session: Session, settings, report: Report) -> by
 
 def figure_file(bench: Any, session: Session, settings, out: Path, report: Report) -> Path:
     """Write the figure, or the moving picture, and the caption beside it."""
-    from fieldview.files.writing import write_whole
+    from fieldview.files.writing import said_if_unwritable, write_whole
     from fieldview.publish.figures import animate, caption, draw, save
     from fieldview.publish.figures.animation import ENDINGS
 
@@ -253,7 +254,9 @@ def figure_file(bench: Any, session: Session, settings, out: Path, report: Repor
     else:
         report(0.1)
         save(draw(bench, settings), settings, out)
-    write_whole(out.with_suffix(".txt"), caption(bench, settings).encode())
+    beside = out.with_suffix(".txt")
+    with said_if_unwritable(beside):
+        write_whole(beside, caption(bench, settings).encode())
     return out
 
 

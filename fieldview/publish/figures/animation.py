@@ -10,7 +10,7 @@ from pathlib import Path
 import numpy as np
 
 from fieldview.compute.errors import InputError
-from fieldview.files.writing import write_whole
+from fieldview.files.writing import said_if_unwritable, write_whole
 from fieldview.publish.figures.maps import drawn
 from fieldview.publish.figures.panels import Panel, colour_scale, frame_words, panels_of
 from fieldview.publish.figures.paper import style
@@ -62,10 +62,8 @@ def animate(
     settings = _fixed_scale(bench, settings, frames)
     shown = progress(_pictures(bench, settings, frames), "drawing", len(frames))
     content = _written(shown, ending, rate)
-    try:
+    with said_if_unwritable(path):
         write_whole(path, content)
-    except OSError as error:
-        raise InputError(f"{path}: cannot be written ({error.strerror}); choose another place") from None
 
 
 def _fixed_scale(bench: Workbench, settings: FigureSettings, frames: list) -> FigureSettings:

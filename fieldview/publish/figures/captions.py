@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import hashlib
-
 import fieldview
 from fieldview.compute.field import Field, Status
 from fieldview.compute.quantities import QUANTITIES
@@ -16,7 +14,7 @@ from fieldview.publish.figures.regions import number_of, number_text
 from fieldview.session.figures import FigureSettings
 from fieldview.session.ledger import sentence
 from fieldview.session.replay import Workbench
-from fieldview.session.store import dump_session
+from fieldview.session.store import session_digest
 
 _CURVES = {
     "growth": "as the contour is scaled about its centroid; the band is the combined standard uncertainty",
@@ -37,8 +35,7 @@ def caption(bench: Workbench, settings: FigureSettings) -> str:
     steps = [sentence(step) for step in session.ledger if step.on]
     words.append("Cleaning: " + "; ".join(steps) + "." if steps else "The vectors are as they were measured.")
     words.append(f"Derivatives: {SCHEMES[session.derivative].title.lower()}.")
-    digest = hashlib.sha256(dump_session(session).encode()).hexdigest()
-    words.append(f"Loopflux {fieldview.__version__}, session sha256:{digest}.")
+    words.append(f"Loopflux {fieldview.__version__}, session {session_digest(session)}.")
     return " ".join(word for word in words if word) + "\n"
 
 

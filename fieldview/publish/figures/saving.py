@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 
 import fieldview
 from fieldview.compute.errors import InputError
-from fieldview.files.writing import write_whole
+from fieldview.files.writing import said_if_unwritable, write_whole
 from fieldview.publish.figures.paper import style
 from fieldview.session.figures import FigureSettings
 
@@ -41,7 +41,5 @@ def save(figure: Figure, settings: FigureSettings, path: Path) -> None:
     ending = path.suffix[1:].lower()
     if ending not in ENDINGS:
         raise InputError(f"{path}: the ending must be .pdf, .svg or .png, of a moving picture .gif or .apng")
-    try:
+    with said_if_unwritable(path):
         write_whole(path, picture(figure, settings, ending))
-    except OSError as error:
-        raise InputError(f"{path}: cannot be written ({error.strerror}); choose another place") from None

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import base64
-import hashlib
 import platform
 from collections import Counter
 from importlib.metadata import version
@@ -22,16 +21,11 @@ from fieldview.session.figures import WIDTHS, FigureSettings
 from fieldview.session.measure import NUMBERS
 from fieldview.session.models import Session
 from fieldview.session.replay import Frame, Workbench
-from fieldview.session.store import dump_session
 
 LIBRARIES = ("numpy", "scipy", "pandas", "xarray", "h5py", "pint", "pydantic", "shapely", "matplotlib")
 
 _FULL_BAR = 120
 """Length of a bar that is all of the variance. [px]"""
-
-
-def digest_of_session(session: Session) -> str:
-    return "sha256:" + hashlib.sha256(dump_session(session).encode()).hexdigest()
 
 
 def run_facts(bench: Workbench) -> list[tuple[str, str]]:

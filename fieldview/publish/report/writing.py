@@ -7,7 +7,7 @@ from pathlib import Path
 
 import fieldview
 from fieldview.compute.errors import InputError
-from fieldview.files.writing import write_whole
+from fieldview.files.writing import said_if_unwritable, write_whole
 from fieldview.publish.measuring import Progress, measured_rows
 from fieldview.publish.remarks import Remarks
 from fieldview.publish.report import gathering
@@ -16,7 +16,7 @@ from fieldview.publish.run_reports import checked
 from fieldview.publish.studies import choices_study
 from fieldview.session.measure import chosen_frames
 from fieldview.session.replay import Frame, Workbench
-from fieldview.session.store import load_session
+from fieldview.session.store import load_session, session_digest
 
 CACHE_BYTES = 200_000_000
 
@@ -56,10 +56,8 @@ def write_report(
     text, remarks = report_text(
         bench, path.name, frames, choices=choices, progress=progress, say=say, executor=executor
     )
-    try:
+    with said_if_unwritable(out):
         write_whole(out, text.encode())
-    except OSError as error:
-        raise InputError(f"{out}: cannot be written ({error.strerror}); choose another place") from None
     return remarks
 
 
@@ -100,7 +98,7 @@ def report_text(
     text = page.render(
         title=session.title or name,
         session_name=name,
-        session_digest=gathering.digest_of_session(session),
+        session_digest=session_digest(session),
         program=f"Loopflux {fieldview.__version__}",
         run=gathering.run_facts(bench),
         changed=changed,
